@@ -1,0 +1,1 @@
+"""Choose, defend and hand over calibration functions."""
