@@ -1,0 +1,124 @@
+"""The arrays of one dataset as the solvers see them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from fitlib.numerics.weighting import root_weights
+
+
+@dataclass(frozen=True)
+class DatasetArrays:
+    """Observations used, in an order that does not depend on the order of files or rows.
+
+    Attributes
+    ----------
+    rows : ndarray of int
+        Position of each among the observations read.
+    x, y : ndarray of shape (n,)
+        Independent and dependent variable of the fit; stimulus and response, or the reverse for an analysis function.
+    stimulus : ndarray of shape (n,)
+    root_weights : ndarray of shape (n,)
+    level_index, series_index : ndarray of shape (n,), int
+    levels : ndarray of shape (L,)
+        Level values, ascending.
+    series : tuple of str
+        Names of the series.
+    interval : (float, float)
+        Measuring interval, in the unit of the stimulus.
+    x_interval : (float, float)
+        The same interval in the independent variable.
+    """
+
+    rows: np.ndarray
+    x: np.ndarray
+    y: np.ndarray
+    stimulus: np.ndarray
+    root_weights: np.ndarray
+    level_index: np.ndarray
+    series_index: np.ndarray
+    levels: np.ndarray
+    series: tuple[str, ...]
+    interval: tuple[float, float]
+    x_interval: tuple[float, float]
+
+    @property
+    def level_weights(self) -> np.ndarray:
+        """Total weight of each level, shape (L,)."""
+        return np.bincount(self.level_index, self.root_weights**2, minlength=self.levels.size)
+
+    def part(self, keep: np.ndarray) -> DatasetArrays:
+        """The same dataset with some observations only, levels numbered anew."""
+        kept = np.unique(self.level_index[keep])
+        number = np.full(self.levels.size, -1)
+        number[kept] = np.arange(kept.size)
+        return replace(
+            self,
+            rows=self.rows[keep],
+            x=self.x[keep],
+            y=self.y[keep],
+            stimulus=self.stimulus[keep],
+            root_weights=self.root_weights[keep],
+            level_index=number[self.level_index[keep]],
+            series_index=self.series_index[keep],
+            levels=self.levels[kept],
+        )
+
+
+def make_arrays(study, dataset, observations) -> DatasetArrays:
+    """Arrays of the used observations of one dataset.
+
+    Parameters
+    ----------
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+    observations : fitlib.observations.Observations
+
+    Returns
+    -------
+    DatasetArrays
+    """
+    rows = _canonical_order(observations)
+    stimulus = np.asarray(observations.stimulus, dtype=float)[rows]
+    response = np.asarray(observations.response, dtype=float)[rows]
+    names = [observations.series[row] for row in rows]
+    series = tuple(sorted(set(names)))
+    level_index = np.asarray(observations.level_index, dtype=int)[rows]
+    first = np.unique(level_index, return_index=True)[1]
+    levels = np.asarray(observations.level, dtype=float)[rows][first]
+    interval = dataset.measuring_interval or (float(stimulus.min()), float(stimulus.max()))
+    swap = dataset.function == "analysis"
+    return DatasetArrays(
+        rows=rows,
+        x=response if swap else stimulus,
+        y=stimulus if swap else response,
+        stimulus=stimulus,
+        root_weights=root_weights(study.weighting, stimulus),
+        level_index=level_index,
+        series_index=np.array([series.index(name) for name in names]),
+        levels=levels,
+        series=series,
+        interval=(float(interval[0]), float(interval[1])),
+        x_interval=_span_within(response, stimulus, interval) if swap else (float(interval[0]), float(interval[1])),
+    )
+
+
+def _canonical_order(observations) -> np.ndarray:
+    used = [k for k, state in enumerate(observations.state) if state == "used"]
+    used.sort(
+        key=lambda k: (
+            int(observations.level_index[k]),
+            observations.series[k],
+            observations.direction[k],
+            observations.file[k],
+            int(observations.row[k]),
+        )
+    )
+    return np.array(used, dtype=int)
+
+
+def _span_within(response: np.ndarray, stimulus: np.ndarray, interval) -> tuple[float, float]:
+    inside = response[(stimulus >= interval[0]) & (stimulus <= interval[1])]
+    return float(inside.min()), float(inside.max())

@@ -1,0 +1,248 @@
+"""The step ``fits``: every candidate fitted to all used observations and looked at from all sides."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from fitlib.analysis.candidates import CandidateSet, Declared, declared_candidates, supported
+from fitlib.analysis.dataset import DatasetArrays
+from fitlib.analysis.evaluated import in_evaluated_unit
+from fitlib.analysis.jsonable import matrix, number, numbers
+from fitlib.analysis.schemes import level_losses
+from fitlib.numerics.components import (
+    Components,
+    LackOfFit,
+    lack_of_fit,
+    level_residuals,
+    level_space,
+    variance_components,
+)
+from fitlib.numerics.diagnostics import excursion, information_criteria, is_monotone, serial_correlation
+from fitlib.numerics.powers import power_form
+from fitlib.numerics.uncertainty import coefficient_covariance
+from fitlib.numerics.validation import standard_error
+
+#: Probability below which lack of fit is called significant (common practice, no source).
+SIGNIFICANT = 0.05
+
+
+def fit_candidates(candidates: CandidateSet, study, dataset) -> dict:
+    """Fit and examine every candidate.
+
+    Parameters
+    ----------
+    candidates : CandidateSet
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+
+    Returns
+    -------
+    dict
+        ``{"candidates": {candidate: record}}``, JSON-able; candidates that the data cannot support included.
+    """
+    data = candidates.data
+    records = {}
+    gains = _probe_gains(candidates)
+    fits = candidates.fit()
+    for item in declared_candidates(study.families):
+        position = candidates.position(item.candidate)
+        if position is None:
+            records[item.candidate] = _unsupported(item, data)
+        elif fits[position].message:
+            records[item.candidate] = _not_fitted(item, data, fits[position].message)
+        else:
+            records[item.candidate] = _record(item, candidates, position, fits[position], dataset, gains[position])
+    return {"candidates": records}
+
+
+def _unsupported(item: Declared, data: DatasetArrays) -> dict:
+    levels = data.levels.size
+    if levels < 2:
+        return _not_fitted(item, data, "the stimulus is constant: no function of it can be fitted")
+    need = item.parameters + 2
+    parameters = "1 parameter needs" if item.parameters == 1 else f"{item.parameters} parameters need"
+    return _not_fitted(item, data, f"{parameters} at least {need} levels; there are {levels}")
+
+
+def _heading(item: Declared, data: DatasetArrays) -> dict:
+    return {
+        "candidate": item.candidate,
+        "family": item.family,
+        "group": item.group,
+        "degree": item.order,
+        "parameters": item.parameters,
+        "degrees_of_freedom": int(data.rows.size - item.parameters),
+        "level_degrees_of_freedom": int(data.levels.size - item.parameters),
+    }
+
+
+def _not_fitted(item: Declared, data: DatasetArrays, message: str) -> dict:
+    return _heading(item, data) | {"status": "not_fitted", "message": message}
+
+
+def _record(item: Declared, candidates: CandidateSet, position: int, fit, dataset, gain: float) -> dict:
+    data = candidates.data
+    curve = candidates.curve(position, fit.coefficients)
+    design = curve.jacobian(data.x)
+    lack = lack_of_fit(fit.residual, data.root_weights, data.level_index, item.parameters)
+    parts = variance_components(fit.residual, design, data.root_weights, data.level_index, data.series_index)
+    found = bool(lack is not None and lack.p < SIGNIFICANT and parts.level_deviation > 0)
+    spread = _spread(fit, parts, item, data, found)
+    covariance = coefficient_covariance(
+        design, data.root_weights, fit.inverse_normal, data.level_index, spread["variance"], spread["level_variance"]
+    )
+    power = power_form(curve, covariance, *data.x_interval)
+    return (
+        _heading(item, data)
+        | {"status": "fitted", "message": ""}
+        | _sizes(fit, item, data)
+        | _shape(curve, fit, data)
+        | _misfit(curve, fit, design, data, dataset, lack, gain)
+        | {
+            "components": _components(parts, found),
+            "covariance": matrix(covariance),
+            "covariance_degrees_of_freedom": float(spread["degrees_of_freedom"]),
+            "observation_variance": number(spread["variance"] + spread["level_variance"]),
+            "reading_standard_deviation": number(spread["reading"]),
+            "level_standard_deviation": number(spread["not_divided"]),
+            "terms": [
+                {"term": f"x^{k}", "estimate": number(estimate), "standard_uncertainty": number(uncertainty)}
+                for k, (estimate, uncertainty) in enumerate(
+                    zip(power.coefficients, power.standard_uncertainties, strict=True)
+                )
+            ],
+            "power_shift": number(power.largest_shift),
+            "scaled": curve.to_record(),
+        }
+    )
+
+
+def _spread(fit, parts: Components, item: Declared, data: DatasetArrays, found: bool) -> dict:
+    """Variances that the bands and the covariance are made of, each entered once (design rule on level deviations)."""
+    free = data.rows.size - item.parameters
+    residual_variance = fit.residual_sum_of_squares / free if free > 0 else np.nan
+    variance = parts.pure_error**2 if found else residual_variance
+    level_variance = parts.level_deviation**2 if found else 0.0
+    series_variance = np.nan_to_num(parts.series_deviation) ** 2
+    repeat = parts.repeatability**2 if np.isfinite(parts.repeatability) else variance
+    return {
+        "variance": variance,
+        "level_variance": level_variance,
+        "degrees_of_freedom": data.levels.size - item.parameters if found else free,
+        "reading": np.sqrt(repeat),
+        # What averaging readings does not divide: the rest of one observation's variance
+        "not_divided": np.sqrt(level_variance + max(series_variance, variance - repeat, 0.0)),
+    }
+
+
+def _sizes(fit, item: Declared, data: DatasetArrays) -> dict:
+    n = data.rows.size
+    rows = information_criteria(fit.residual_sum_of_squares, data.root_weights, item.parameters)
+    means, weights = level_residuals(fit.residual, data.root_weights, data.level_index)
+    squares = float(np.sum(weights * means**2))
+    root = np.sqrt(weights / weights.mean())
+    levels = information_criteria(squares / weights.mean(), root, item.parameters)
+    free = n - item.parameters
+    return {
+        "residual_sum_of_squares": number(fit.residual_sum_of_squares),
+        "residual_standard_deviation": number(np.sqrt(fit.residual_sum_of_squares / free)) if free > 0 else None,
+        "fitted_point_loss": number(fit.residual_sum_of_squares / np.sum(data.root_weights**2)),
+        "level_sum_of_squares": squares,
+        "aicc": number(rows.aicc),
+        "bic": number(rows.bic),
+        "aicc_levels": number(levels.aicc),
+        "bic_levels": number(levels.bic),
+        "condition_number": number(fit.condition_number),
+    }
+
+
+def _shape(curve, fit, data: DatasetArrays) -> dict:
+    beyond = excursion(curve, data.x, data.y, _ascending_in_x(data))
+    free = data.rows.size - fit.coefficients.size
+    deviation = np.sqrt(fit.residual_sum_of_squares / free) if free > 0 else np.nan
+    span = float(np.ptp(data.y))
+    return {
+        "monotone": is_monotone(curve, *data.x_interval),
+        "turning_points": numbers(curve.turning_points(*data.x_interval)),
+        "excursion": {
+            "stimulus": beyond.stimulus,
+            "amount": beyond.amount,
+            "in_residual_sd": number(beyond.amount / deviation) if deviation > 0 else None,
+            "in_span": number(beyond.amount / span) if span > 0 else None,
+        },
+    }
+
+
+def _ascending_in_x(data: DatasetArrays) -> np.ndarray:
+    """Level numbers in the order of the independent variable (for an analysis function it may fall)."""
+    means = np.bincount(data.level_index, data.x) / np.bincount(data.level_index)
+    rank = np.empty(means.size, dtype=int)
+    rank[np.argsort(means, kind="stable")] = np.arange(means.size)
+    return rank[data.level_index]
+
+
+def _misfit(curve, fit, design, data: DatasetArrays, dataset, lack: LackOfFit | None, gain: float) -> dict:
+    means, weights = level_residuals(fit.residual, data.root_weights, data.level_index)
+    at = np.bincount(data.level_index, data.x) / np.bincount(data.level_index)
+    sizes = np.abs(in_evaluated_unit(curve, dataset, at, means))
+    basis, _ = level_space(design, data.root_weights, data.level_index)
+    serial = serial_correlation(np.sqrt(weights) * means, basis)
+    return {
+        "lack_of_fit": None
+        if lack is None
+        else {
+            "f": number(lack.f),
+            "p": number(lack.p),
+            "numerator_df": lack.numerator_df,
+            "denominator_df": lack.denominator_df,
+            "sum_of_squares": number(lack.sum_of_squares),
+            "pure_error_sum_of_squares": number(lack.pure_error_sum_of_squares),
+        },
+        "misfit": number(np.max(sizes)),
+        "misfit_level": number(data.levels[int(np.argmax(np.where(np.isfinite(sizes), sizes, -1)))]),
+        "serial": None if serial is None else {"ratio": number(serial.ratio), "p": number(serial.p)},
+        "probe_gain": number(gain),
+    }
+
+
+def _components(parts: Components, found: bool) -> dict:
+    return {
+        "repeatability": number(parts.repeatability),
+        "series_deviation": number(parts.series_deviation),
+        "pure_error": number(parts.pure_error),
+        "level_deviation": number(parts.level_deviation),
+        "level_deviation_found": found,
+    }
+
+
+def _probe_gains(candidates: CandidateSet) -> list[float]:
+    """By how many paired standard errors the member two orders higher lowers the level loss of each entry."""
+    data = candidates.data
+    if not candidates.entries or data.levels.size < 3:
+        return [np.nan] * len(candidates.entries)
+    levels = level_losses(candidates)
+    share = data.level_weights / data.level_weights.sum()
+    return [_gain(levels, share, data.level_weights, k, candidates.probe_of(k)) for k in range(len(candidates.entries))]
+
+
+def _gain(levels: np.ndarray, share: np.ndarray, weights: np.ndarray, position: int, probe: int | None) -> float:
+    if probe is None or not np.all(np.isfinite(levels[[position, probe]])):
+        return np.nan
+    difference = levels[position] - levels[probe]
+    error = standard_error(difference[None, :], weights)[0]
+    return float(difference @ share / error) if error > 0 else np.nan
+
+
+def make_candidates(data: DatasetArrays, study) -> CandidateSet:
+    """The candidates of a study that a dataset can support.
+
+    Parameters
+    ----------
+    data : DatasetArrays
+    study : fitlib.study.Study
+
+    Returns
+    -------
+    CandidateSet
+    """
+    return CandidateSet(data, supported(declared_candidates(study.families), data.levels.size), study.families)

@@ -1,0 +1,155 @@
+"""The calibration function for machines: what functions/<dataset>.json holds."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from fitlib.analysis.dataset import DatasetArrays
+from fitlib.analysis.words import figure
+from fitlib.numerics.families import restore
+from fitlib.numerics.weighting import spread
+
+#: Test vectors inside the interval, both ends included.
+VECTORS_INSIDE = 21
+FIT_ONLY = "fit-only uncertainty: not a complete measurement uncertainty"
+
+
+def function_record(study, dataset, data: DatasetArrays, chosen: dict, selection: dict) -> dict:
+    """The record of the chosen function.
+
+    Parameters
+    ----------
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+    data : DatasetArrays
+    chosen : dict
+        Its record of the step ``fits``.
+    selection : dict
+        Result of the step ``selection``.
+
+    Returns
+    -------
+    dict
+        JSON-able.
+    """
+    curve = restore(chosen["scaled"])
+    return {
+        "format": 1,
+        "dataset": dataset.id,
+        "family": chosen["family"],
+        "candidate": chosen["candidate"],
+        "evaluation": dataset.evaluation,
+        "function": dataset.function,
+        "weighting": study.weighting,
+        "weight_scale": float(_weight_scale(study, data)),
+        "stimulus": {"quantity": study.stimulus.quantity, "unit": study.stimulus.unit},
+        "response": {"quantity": study.response.quantity, "unit": study.response.unit},
+        "measuring_interval": list(data.interval),
+        "response_at_ends": _response_at_ends(dataset, curve, data),
+        "scaled": chosen["scaled"],
+        "covariance": chosen["covariance"],
+        "degrees_of_freedom": chosen["covariance_degrees_of_freedom"],
+        "reading_standard_deviation": chosen["reading_standard_deviation"],
+        "level_standard_deviation": chosen["level_standard_deviation"],
+        "power_coefficients": chosen["terms"],
+        "power_shift": chosen["power_shift"],
+        "verdict": selection["verdict"],
+        "verdict_reason": selection["verdict_reason"],
+        "choice": selection["choice"],
+        "uncertainty_statement": FIT_ONLY,
+        "cautions": cautions(study, dataset, data, selection["verdict"]),
+        "record": dict(dataset.record),
+        "test_vectors": _test_vectors(dataset, curve, data, chosen["monotone"]),
+    }
+
+
+def cautions(study, dataset, data: DatasetArrays, verdict: str) -> list[str]:
+    """What a user of the function has to be told.
+
+    Parameters
+    ----------
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+    data : DatasetArrays
+    verdict : str
+
+    Returns
+    -------
+    list of str
+    """
+    unit = "" if study.stimulus.unit == "1" else f" {study.stimulus.unit}"
+    lower, upper = (figure(value, 8) for value in data.interval)
+    serial = dataset.record.get("serial_number")
+    lines = [
+        f"Valid only for {study.stimulus.quantity} from {lower} to {upper}{unit}; there is no conversion outside.",
+        f"Valid only for {f'the instrument with serial number {serial}' if serial else 'the instrument calibrated'}, "
+        f"as it was on the day of calibration{_clause(dataset.record, 'date', ' (', ')')}"
+        f"{_clause(dataset.record, 'conditions', ' and under its conditions (', ')')}.",
+        f"Uncertainty stated with it is {FIT_ONLY}.",
+        "Not a substitute for an accredited calibration procedure or a functional-safety assessment. Local codes, "
+        "accredited procedures and the judgement of licensed or otherwise competent persons take precedence.",
+        "Check it against an independent standard before use.",
+    ]
+    if verdict != "adequate":
+        lines.insert(0, f"Verdict {verdict}: not to be used for conversion.")
+    return lines
+
+
+def _clause(record: dict, key: str, before: str, after: str) -> str:
+    return f"{before}{record[key]}{after}" if record.get(key) else ""
+
+
+def observation_spread(study, dataset, curve, x: np.ndarray, data: DatasetArrays) -> np.ndarray:
+    """Relative standard deviation of one observation at each abscissa, 1 on average over the observations used.
+
+    Parameters
+    ----------
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+    curve : Curve
+    x : ndarray of shape (n,)
+        Independent variable of the fit.
+    data : DatasetArrays
+
+    Returns
+    -------
+    ndarray of shape (n,)
+    """
+    stimulus = curve.evaluate(x) if dataset.function == "analysis" else x
+    if study.weighting == "none":
+        return np.ones_like(x)
+    return spread(study.weighting, np.maximum(stimulus, np.min(data.stimulus))) * _weight_scale(study, data)
+
+
+def _weight_scale(study, data: DatasetArrays) -> float:
+    """Factor from the spread of the weighting to the standard deviation at weight 1 (weights average 1)."""
+    relative = spread(study.weighting, data.stimulus)
+    return float(np.sqrt(np.mean(relative**-2.0)))
+
+
+def _response_at_ends(dataset, curve, data: DatasetArrays) -> list[float]:
+    if dataset.function != "analysis":
+        return [float(value) for value in curve.evaluate(np.array(data.interval))]
+    first, last = curve.evaluate(np.array(data.x_interval))
+    ends = list(data.x_interval)
+    return ends if first <= last else ends[::-1]
+
+
+def _test_vectors(dataset, curve, data: DatasetArrays, monotone: bool) -> list[dict]:
+    """Pairs of stimulus and response inside the interval, and two outside with the verdict expected."""
+    grid = np.linspace(*data.x_interval, VECTORS_INSIDE)
+    values = curve.evaluate(grid)
+    pairs = zip(values, grid, strict=True) if dataset.function == "analysis" else zip(grid, values, strict=True)
+    ordered = sorted(pairs)
+    vectors = [{"stimulus": float(a), "response": float(b), "verdict": "within_interval"} for a, b in ordered]
+    return vectors + _outside(dataset, curve, data) if monotone else vectors
+
+
+def _outside(dataset, curve, data: DatasetArrays) -> list[dict]:
+    lower, upper = data.interval
+    at_lower, at_upper = _response_at_ends(dataset, curve, data)
+    step, span = (at_upper - at_lower) / 100, (upper - lower) / 100
+    return [
+        {"stimulus": lower - span, "response": at_lower - step, "verdict": "below_range"},
+        {"stimulus": upper + span, "response": at_upper + step, "verdict": "above_range"},
+    ]

@@ -1,0 +1,95 @@
+"""The verdict on the chosen candidate, with its reason in words."""
+
+from __future__ import annotations
+
+from fitlib.analysis.fits import SIGNIFICANT
+from fitlib.analysis.words import amount, figure, listed, probability
+
+#: Without replicates, fewer levels than this cannot show a smooth misfit.
+FEWEST_LEVELS_WITHOUT_REPLICATES = 7
+#: Probability below which level residuals count as serially correlated.
+SERIAL_PROBABILITY = 0.01
+#: Paired standard errors by which a candidate two orders higher must lower the level loss.
+PROBE_STANDARD_ERRORS = 2.0
+
+
+def judge(record: dict, levels: int, replicates: bool, target: float | None, unit: str) -> tuple[str, str]:
+    """Verdict on one fitted candidate.
+
+    ``inadequate`` needs a smooth misfit, significant against pure error where there are replicates, and larger than
+    the target where one is declared; an irregular excess is a level deviation, not a fault of the function.
+
+    Parameters
+    ----------
+    record : dict
+        Of the step ``fits``.
+    levels : int
+    replicates : bool
+    target : float or None
+        Target expanded uncertainty, in the evaluated quantity's unit.
+    unit : str
+        Unit of the evaluated quantity.
+
+    Returns
+    -------
+    verdict, reason : str
+    """
+    if not replicates and levels < FEWEST_LEVELS_WITHOUT_REPLICATES:
+        return "not_evaluated", (
+            f"without replicates and with {levels} levels a lack of fit could not be seen; "
+            f"replicates or at least {FEWEST_LEVELS_WITHOUT_REPLICATES} levels are needed"
+        )
+    lack = record["lack_of_fit"]
+    significant = lack is not None and lack["p"] < SIGNIFICANT
+    smooth = _smooth_signs(record)
+    against = _against_pure_error(lack)
+    if lack is not None and not significant:
+        return "adequate", f"no lack of fit against pure error ({against})"
+    if not smooth:
+        if lack is None:
+            return "adequate", "no smooth misfit is seen; there are no replicates to compare it with"
+        return "adequate", (
+            f"the levels scatter more than their replicates ({against}), but irregularly: "
+            "a deviation of the levels, not a misfit of the function"
+        )
+    size = f"largest mean deviation of a level {amount(record['misfit'], unit)}" if record["misfit"] is not None else ""
+    why = listed(smooth) + (f" ({against})" if lack is not None else "") + (f"; {size}" if size else "")
+    if target is not None and record["misfit"] is not None and record["misfit"] <= target:
+        return "adequate", f"a smooth misfit is seen but is smaller than the target of {amount(target, unit)}: {why}"
+    return "inadequate", f"smooth misfit: {why}"
+
+
+def _smooth_signs(record: dict) -> list[str]:
+    signs = []
+    gain = record["probe_gain"]
+    if gain is not None and gain > PROBE_STANDARD_ERRORS:
+        signs.append(f"two orders more lower the level loss by {figure(gain, 2)} paired standard errors")
+    serial = record["serial"]
+    if serial is not None and serial["p"] < SERIAL_PROBABILITY:
+        signs.append(
+            f"the level residuals follow one another (von Neumann ratio {figure(serial['ratio'], 3)}, "
+            f"{probability(serial['p'])})"
+        )
+    return signs
+
+
+def _against_pure_error(lack: dict | None) -> str:
+    return "" if lack is None else lack_of_fit_words(lack)
+
+
+def lack_of_fit_words(lack: dict) -> str:
+    """The F test of lack of fit in words.
+
+    Parameters
+    ----------
+    lack : dict
+        Keys ``f``, ``p``, ``numerator_df``, ``denominator_df``.
+
+    Returns
+    -------
+    str
+    """
+    return (
+        f"lack of fit F = {figure(lack['f'], 5)} on {lack['numerator_df']} and {lack['denominator_df']} "
+        f"degrees of freedom, {probability(lack['p'])}"
+    )

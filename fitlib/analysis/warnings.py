@@ -1,0 +1,139 @@
+"""What a reader of page one has to know about a dataset, in plain sentences."""
+
+from __future__ import annotations
+
+from fitlib.analysis.choice import FLOOR_IN_EPSILON
+from fitlib.analysis.words import amount, counted, figure, listed
+
+#: Excursions beyond the neighbouring observations larger than this many residual standard deviations are told.
+LARGE_EXCURSION = 3.0
+
+
+def collect_warnings(result: dict, study, dataset, observations) -> list[str]:
+    """All warnings of one dataset.
+
+    Parameters
+    ----------
+    result : dict
+        The result without its warnings.
+    study : fitlib.study.Study
+    dataset : fitlib.study.DatasetSettings
+    observations : fitlib.observations.Observations
+
+    Returns
+    -------
+    list of str
+    """
+    warnings = list(observations.notes)
+    warnings += _row_wise(result)
+    warnings += _schemes(result)
+    chosen = next((item for item in result["candidates"] if item["chosen"]), None)
+    if chosen is not None:
+        warnings += _exact(result, chosen)
+        warnings += _suspects(result)
+        warnings += _levels(result, chosen)
+        warnings += _shape(result, chosen)
+        warnings += _rivals(result, chosen)
+    return warnings
+
+
+def _row_wise(result: dict) -> list[str]:
+    if not result["design"]["replicates"]:
+        return []
+    deciding = result["settings"]["loss"]
+    found = [scheme for scheme in result["schemes"] if scheme["row_wise"] and scheme["scheme"] == deciding]
+    return [
+        f"{scheme['scheme']} decides although it separates observations of one level: replicates are then on both "
+        "sides, and the loss favours functions that follow the deviations of single levels"
+        for scheme in found
+    ]
+
+
+def _schemes(result: dict) -> list[str]:
+    lines = [
+        f"{scheme['scheme']} was not evaluated: {scheme['message']}"
+        for scheme in result["schemes"]
+        if scheme["status"] != "evaluated"
+    ]
+    for scheme in result["schemes"]:
+        deficient = {name: count for name, count in (scheme["rank_deficient_draws"] or {}).items() if count}
+        if deficient:
+            named = listed([f"{count} for {name}" for name, count in deficient.items()])
+            lines.append(f"{scheme['scheme']}: draws with too few levels, of {scheme['draws']}: {named}")
+    without = result["selection"]["draws_without_choice"]
+    if without:
+        lines.append(f"in {counted(without, 'bootstrap draw')} the rule could not take any candidate")
+    if result["selection"]["outer_message"]:
+        lines.append(f"no outer loss: {result['selection']['outer_message']}")
+    return lines
+
+
+def _exact(result: dict, chosen: dict) -> list[str]:
+    largest = max(abs(value) for value in _fitted_quantity(result))
+    if chosen["fitted_point_loss"] > (FLOOR_IN_EPSILON * 2.220446049250313e-16 * largest) ** 2:
+        return []
+    return ["the chosen candidate passes through every observation to rounding: the data look computed, not measured"]
+
+
+def _fitted_quantity(result: dict) -> list[float]:
+    rows = result["observations"]
+    column = "stimulus" if result["settings"]["function"] == "analysis" else "response"
+    return [value for value, state in zip(rows[column], rows["state"], strict=True) if state == "used"]
+
+
+def _suspects(result: dict) -> list[str]:
+    rows = result["observations"]
+    found = [
+        f"{rows['file'][k]} row {rows['row'][k]} (studentized residual {figure(rows['studentized_residual'][k], 3)})"
+        for k, flag in enumerate(rows["flag"])
+        if flag
+    ]
+    if not found:
+        return []
+    return [f"{counted(len(found), 'observation')} flagged as suspect, and kept: {listed(found)}"]
+
+
+def _levels(result: dict, chosen: dict) -> list[str]:
+    parts = result["selection"]["components"]
+    if not parts["level_deviation_found"]:
+        return []
+    unit = result["settings"]["fitted"]["unit"]
+    text = f"levels carry their own deviation: standard deviation {amount(parts['level_deviation'], unit, 2)}"
+    if parts["level_deviation_evaluated"] is not None and unit != result["settings"]["evaluated"]["unit"]:
+        text += f", or {amount(parts['level_deviation_evaluated'], result['settings']['evaluated']['unit'], 2)}"
+    text += f", against a scatter within levels of {amount(parts['pure_error'], unit, 2)}"
+    return [text + "; it is not explained by the replicates and enters the uncertainty"]
+
+
+def _shape(result: dict, chosen: dict) -> list[str]:
+    beyond = chosen["excursion"]
+    if beyond["in_residual_sd"] is None or beyond["in_residual_sd"] <= LARGE_EXCURSION:
+        return []
+    place = amount(beyond["stimulus"], result["curves"]["abscissa"]["unit"])
+    return [
+        f"near {place} the chosen function leaves the neighbouring observations by "
+        f"{figure(beyond['in_residual_sd'], 2)} residual standard deviations"
+    ]
+
+
+def _rivals(result: dict, chosen: dict) -> list[str]:
+    selection, lines = result["selection"], []
+    if selection["choice"] == "tie":
+        lines.append(f"tie: {selection['choice_reason']}; the simplest is issued")
+    inner = selection["interior_candidate"]
+    if inner is not None and inner != chosen["candidate"]:
+        lines.append(f"without the losses of the first and last level the rule would take {inner}")
+    others = {name: count for name, count in selection["outer_choices"].items() if name != chosen["candidate"]}
+    if others:
+        named = listed([f"{name} in {count}" for name, count in others.items()])
+        lines.append(
+            f"the selection repeated without one level takes another candidate: {named} of {selection['outer_folds']}"
+        )
+    by_series = selection["rankings"].get("leave_one_series_out")
+    parameters = {item["candidate"]: item["parameters"] for item in result["candidates"]}
+    if by_series is not None and parameters[by_series] > parameters[chosen["candidate"]]:
+        lines.append(
+            f"leave_one_series_out has its smallest loss with {by_series}: a series left out shares its levels, and "
+            "their deviations, with those kept in, so that it favours more parameters; it does not decide"
+        )
+    return lines

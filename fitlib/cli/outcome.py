@@ -1,0 +1,110 @@
+"""The outcome of a run, or of a dry run, in lines that a person can read; hundreds of datasets too."""
+
+from __future__ import annotations
+
+import os
+from collections import Counter
+
+from fitlib.cli.output import align, counted, shorten
+
+LISTED = 40  # datasets shown one by one; of more, those that need a person come first
+NAMED = 5  # datasets named where many have the same steps
+HEADER = ("dataset", "candidate", "verdict", "choice", "loss", "outer_loss", "runner_up", "margin")
+NUMBERS = {"loss", "outer_loss", "margin"}
+ABSENT = "-"
+
+
+def needs_person(row) -> bool:
+    """Whether somebody has to look at this dataset."""
+    return row.verdict != "adequate" or row.choice == "tie"
+
+
+def describe_run(summary) -> list[str]:
+    """Return the lines that tell what a run came to.
+
+    Parameters
+    ----------
+    summary : RunSummary
+
+    Returns
+    -------
+    list of str
+    """
+    shown = _shown(summary.rows)
+    lines = align(HEADER, [_cells(row) for row in shown], NUMBERS).splitlines()
+    table = os.path.join(summary.path, "tables", "chosen.csv")
+    if len(shown) < len(summary.rows):
+        rest = counted(len(summary.rows) - len(shown), "more dataset")
+        lines.append(f"and {rest}; all {len(summary.rows)} are in {table}")
+    lines += ["", _counts(summary.rows)]
+    lines += [f"warning: {warning}" for warning in summary.warnings]
+    return [*lines, _work(summary), f"revision: {summary.path}"]
+
+
+def _shown(rows) -> list:
+    """All rows, or of many the ones that need a person and as many others as there is room for, in their order."""
+    if len(rows) <= LISTED:
+        return list(rows)
+    first = sorted(range(len(rows)), key=lambda number: (not needs_person(rows[number]), number))[:LISTED]
+    return [rows[number] for number in sorted(first)]
+
+
+def _cells(row) -> tuple[str, ...]:
+    return (
+        shorten(row.dataset, 40),
+        row.candidate or ABSENT,
+        row.verdict,
+        row.choice or ABSENT,
+        _number(row.loss),
+        _number(row.outer_loss),
+        row.runner_up or ABSENT,
+        _number(row.margin, 3),
+    )
+
+
+def _number(value: float | None, digits: int = 4) -> str:
+    return ABSENT if value is None else f"{value:.{digits}g}"
+
+
+def _counts(rows) -> str:
+    verdicts = Counter(row.verdict for row in rows)
+    parts = [f"{verdicts[name]} {name}" for name in ("adequate", "inadequate", "not_evaluated") if verdicts[name]]
+    ties = sum(row.choice == "tie" for row in rows)
+    parts += [counted(ties, "tie")] if ties else []
+    return f"{counted(len(rows), 'dataset')}: {', '.join(parts)}"
+
+
+def _work(summary) -> str:
+    if not summary.computed and not summary.kept:
+        return summary.note
+    return f"{summary.note} ({counted(summary.computed, 'step')} computed, {summary.kept} kept)"
+
+
+def describe_dry_run(plan) -> list[str]:
+    """Return the lines that tell what a run would do.
+
+    Parameters
+    ----------
+    plan : DryRun
+
+    Returns
+    -------
+    list of str
+    """
+    lines = [f"warning: {warning}" for warning in plan.warnings]
+    if plan.unchanged:
+        return [*lines, f"{plan.study}: nothing to do, {plan.revision} holds these results"]
+    lines += [f"{plan.study}: {reason}" for reason in plan.reasons]
+    if not plan.steps:
+        return [*lines, f"{plan.study}: every step is stored; a run would publish them"]
+    groups: dict[tuple[str, ...], list[str]] = {}
+    for dataset, steps in plan.steps.items():
+        groups.setdefault(tuple(steps), []).append(dataset)
+    lines.append(f"{plan.study}: {counted(sum(map(len, plan.steps.values())), 'step')} would be computed")
+    return lines + [_group(steps, datasets) for steps, datasets in groups.items()]
+
+
+def _group(steps: tuple[str, ...], datasets: list[str]) -> str:
+    named = ", ".join(shorten(dataset, 40) for dataset in datasets[:NAMED])
+    more = f" and {len(datasets) - NAMED} more" if len(datasets) > NAMED else ""
+    return f"  {counted(len(datasets), 'dataset')} ({named}{more}): {', '.join(steps)}"

@@ -1,0 +1,147 @@
+"""Conversions as a CSV table: the columns of the readings file first, then what became of each reading."""
+
+from __future__ import annotations
+
+import csv
+import io
+from collections import Counter
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass, replace
+
+from fitlib.conversion.readings import Readings, parse_number
+from fitlib.conversion.record import Conversion
+
+COLUMNS = (
+    "verdict",
+    "value",
+    "unit",
+    "standard_uncertainty",
+    "expanded_uncertainty",
+    "coverage_factor",
+    "coverage_probability",
+    "readings",
+    "choice",
+    "note",
+)
+SIGNS = ("=", "+", "-", "@", "\t", "\r")  # a spreadsheet would take such a text for a formula
+
+
+@dataclass(frozen=True)
+class ConversionTable:
+    """A table of conversions, and what it holds.
+
+    Attributes
+    ----------
+    text : str
+        CSV with one header row.
+    verdicts : dict of str to int
+        How many readings have each verdict.
+    without_value : int
+        Readings for which there is no value.
+    """
+
+    text: str
+    verdicts: dict[str, int]
+    without_value: int
+
+
+def guard(cell: str) -> str:
+    """Return a cell that no spreadsheet takes for a formula.
+
+    Parameters
+    ----------
+    cell : str
+
+    Returns
+    -------
+    str
+        With a leading ``'`` when it is a text that starts with a sign; numbers are left alone.
+    """
+    is_number = parse_number(cell) is not None or parse_number(cell, "comma") is not None
+    return f"'{cell}" if cell.startswith(SIGNS) and not is_number else cell
+
+
+def _cell(value: object) -> str:
+    if value is None:
+        return ""
+    return repr(float(value)) if isinstance(value, float) else guard(str(value))
+
+
+def _answer_cells(conversion: Conversion, choice: str) -> list[str]:
+    record = {**vars(conversion), "choice": choice}
+    return [_cell(record[name]) for name in COLUMNS]
+
+
+def _own_names(header: Sequence[str]) -> list[str]:
+    """Names of the file's columns, changed where the table has a column of that name itself."""
+    taken = {"row", *COLUMNS}
+    return [f"{name}_in_file" if name in taken else name for name in header]
+
+
+def _write(header: list[str], rows: Iterable[list[str]]) -> str:
+    text = io.StringIO()
+    writer = csv.writer(text, lineterminator="\n")
+    writer.writerow(header)
+    writer.writerows(rows)
+    return text.getvalue()
+
+
+def _table(header: list[str], rows: list[list[str]], conversions: list[Conversion], choice: str) -> ConversionTable:
+    complete = [[*cells, *_answer_cells(each, choice)] for cells, each in zip(rows, conversions, strict=True)]
+    without = sum(conversion.value is None for conversion in conversions)
+    verdicts = dict(Counter(conversion.verdict for conversion in conversions))
+    return ConversionTable(_write([*header, *COLUMNS], complete), verdicts, without)
+
+
+def conversion_table(
+    readings: Readings, convert: Callable[[float, int], Conversion], averaged: int = 1, choice: str = "decided"
+) -> ConversionTable:
+    """Convert every row of a readings file; no row is dropped.
+
+    Parameters
+    ----------
+    readings : Readings
+    convert : callable
+        ``CalibrationFunction.convert`` or one of its kind.
+    averaged : int
+        How many readings were averaged in each row.
+    choice : str
+        ``decided`` or ``tie``, marked in every row.
+
+    Returns
+    -------
+    ConversionTable
+    """
+    known: dict[float, Conversion] = {}
+    conversions, rows = [], []
+    width = len(readings.header)
+    for row in readings.rows:
+        if row.reading not in known or row.fault:
+            known[row.reading] = convert(row.reading, averaged)
+        conversion = known[row.reading]
+        conversions.append(replace(conversion, note=row.fault) if row.fault else conversion)
+        kept = (
+            [*row.cells[: width - 1], ";".join(row.cells[width - 1 :])] if len(row.cells) > width else list(row.cells)
+        )
+        padded = kept + [""] * (width - len(kept))
+        rows.append([str(row.number), *(guard(cell) for cell in padded)])
+    return _table(["row", *(guard(name) for name in _own_names(readings.header))], rows, conversions, choice)
+
+
+def answers_table(conversions: Sequence[Conversion], given_as: str, choice: str = "decided") -> ConversionTable:
+    """Make the table of readings that were given one by one.
+
+    Parameters
+    ----------
+    conversions : sequence of Conversion
+    given_as : {"response", "stimulus"}
+        Name of the first column.
+    choice : str
+        ``decided`` or ``tie``, marked in every row.
+
+    Returns
+    -------
+    ConversionTable
+    """
+    rows = [[repr(each.given), each.given_unit] for each in conversions]
+    return _table([given_as, f"{given_as}_unit"], rows, list(conversions), choice)

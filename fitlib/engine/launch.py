@@ -1,0 +1,244 @@
+"""One run of a study: the whole check first, then Snakemake, unless there is nothing to do."""
+
+from __future__ import annotations
+
+import os
+import sys
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime
+from pathlib import Path
+from typing import Any, TextIO
+
+from fitlib.engine.batch import read_batch_output
+from fitlib.engine.compute import Account
+from fitlib.engine.failure import failure, shown
+from fitlib.engine.files import WorkFolder, plain_os_errors, read_json, work_folder
+from fitlib.engine.locks import take_lock
+from fitlib.engine.planfile import plan_study, read_latest_plan, write_plan_file
+from fitlib.engine.prepare import forget_results, read_marker, remove_unfinished
+from fitlib.engine.process import Ended, run_child
+from fitlib.engine.progress import Events, Progress
+from fitlib.engine.store import Store
+from fitlib.engine.summary import DryRun, RunSummary, SummaryRow
+from fitlib.engine.workflow import ANOTHER_RUN, require_sound_data
+from fitlib.errors import FitlibError
+from fitlib.plan import BATCHES, Plan, describe_changes, workflow_folder
+
+UNCHANGED = "nothing has changed since: no work, no new revision"
+
+
+@dataclass(frozen=True)
+class _Request:
+    """What was asked for, with the study read and planned."""
+
+    study: Any
+    plan: Plan
+    work: WorkFolder
+    results_dir: str
+    study_file: Path
+    batches: int
+
+
+def run_study(
+    path: str | os.PathLike,
+    results_dir: str | os.PathLike = "results",
+    cores: int | None = None,
+    profile: str | None = None,
+    batches: int = BATCHES,
+    fresh: bool = False,
+    stream: TextIO | None = None,
+) -> RunSummary:
+    """Check a study, compute what is missing, and publish a revision if the results are new.
+
+    Parameters
+    ----------
+    path : path
+        The study.
+    results_dir : path, default "results"
+        Gets ``<study>/rev-0001`` and so on.
+    cores : int, optional
+        How many processor cores may be used; all by default.
+    profile : str, optional
+        A profile of this workflow by name, or one of Snakemake's.
+    batches : int, default 16
+        Into how many jobs the datasets are dealt.
+    fresh : bool, default False
+        Compute everything again, whatever is stored.
+    stream : text stream, optional
+        Takes the progress; standard error by default.
+
+    Returns
+    -------
+    RunSummary
+
+    Raises
+    ------
+    InputError
+        The study or its data cannot be used; nothing was done.
+    FitlibError
+        Another run is active, a dataset failed (nothing is published then), or a job did.
+    """
+    with plain_os_errors("the run stopped"):
+        request = _plan(path, results_dir, batches)
+        if not fresh and (marker := _published(request)):
+            return _summary(request, marker, new=False, note=UNCHANGED, warnings=request.study.warnings)
+        warnings = (*request.study.warnings, *require_sound_data(request.study))
+        reasons = _make_ready(request, fresh)
+        _tell(stream, [f"{request.study.name}: {reason}" for reason in reasons])
+        log = request.work.logs / f"run-{datetime.now(UTC).strftime('%Y%m%dT%H%M%S%f')}.log"
+        before = _existing_outputs(request)
+        ended, events = _run_workflow(request, cores, profile, log, stream)
+        if ended.status != 0 or ended.interrupted:
+            raise failure(request.plan, request.work, ended, events, log)
+        return _finished(request, before, reasons, warnings, log)
+
+
+def dry_run(
+    path: str | os.PathLike, results_dir: str | os.PathLike = "results", batches: int = BATCHES
+) -> DryRun:
+    """Tell what a run would compute and why; nothing is written.
+
+    Parameters
+    ----------
+    path, results_dir, batches
+        As for :func:`run_study`.
+
+    Returns
+    -------
+    DryRun
+
+    Raises
+    ------
+    InputError
+        The study or its data cannot be used.
+    """
+    request = _plan(path, results_dir, batches)
+    if marker := read_marker(request.plan, request.work):
+        return DryRun(request.study.name, True, marker["revision"], {}, (), request.study.warnings)
+    warnings = (*request.study.warnings, *require_sound_data(request.study))
+    store, steps = Store(request.work.store), {}
+    for dataset in request.plan.datasets:
+        missing = tuple(step for step, mark in dataset.steps.items() if not store.has(Store.key(step, mark)))
+        if missing:
+            steps[dataset.id] = missing
+    reasons = tuple(describe_changes(read_latest_plan(request.work), request.plan))
+    return DryRun(request.study.name, False, None, steps, reasons, warnings)
+
+
+def _plan(path: str | os.PathLike, results_dir: str | os.PathLike, batches: int) -> _Request:
+    from fitlib.study import load_study
+
+    study = load_study(os.fspath(path))
+    work = work_folder(results_dir, study.name)
+    return _Request(
+        study, plan_study(study, work, batches), work, os.fspath(results_dir), Path(path).absolute(), batches
+    )
+
+
+def _published(request: _Request) -> dict[str, Any] | None:
+    """The first look, before anything is written; a second run is told of the first here already."""
+    if not request.work.root.is_dir():
+        return None
+    with take_lock(request.work.run_lock, ANOTHER_RUN):
+        return read_marker(request.plan, request.work)
+
+
+def _make_ready(request: _Request, fresh: bool) -> tuple[str, ...]:
+    request.work.create()
+    with take_lock(request.work.run_lock, ANOTHER_RUN):
+        if fresh:
+            forget_results(request.work)
+        remove_unfinished(request.plan, request.work)
+        write_plan_file(request.plan, request.study_file, request.work)
+    reasons = describe_changes(read_latest_plan(request.work), request.plan)
+    return tuple(reasons or ["results are made again"])
+
+
+def _tell(stream: TextIO | None, lines: Sequence[str]) -> None:
+    print("\n".join(lines), file=stream or sys.stderr, flush=True)
+
+
+def _run_workflow(
+    request: _Request, cores: int | None, profile: str | None, log: Path, stream: TextIO | None
+) -> tuple[Ended, Events]:
+    progress = Progress({batch.name: len(batch.members) for batch in request.plan.batches}, stream)
+    try:
+        ended = run_child(_command(request, cores, profile), request.work.root, log, progress.line)
+        return ended, progress.events
+    finally:
+        progress.close()
+
+
+def _command(request: _Request, cores: int | None, profile: str | None) -> list[str]:
+    """The study goes to Snakemake as a path that it never opens; a URI passes its reading of values unchanged."""
+    workflow = workflow_folder()
+    own_profile = workflow / "profiles" / (profile or "default")
+    is_own = own_profile.is_dir() and (profile is None or os.sep not in profile)
+    options = [] if is_own else ["--profile", _profile(profile or "")]
+    return [
+        *(sys.executable, "-P", "-m", "snakemake", "--snakefile", str(workflow / "Snakefile")),
+        *("--workflow-profile", str(own_profile if is_own else workflow / "profiles" / "default")),
+        *options,
+        *("--cores", str(cores or _all_cores()), "--nocolor"),
+        *("--config", f"study_file={request.study_file.as_uri()}"),
+        *(f"results_dir={request.work.results_dir.as_uri()}", f"batches={request.batches}"),
+        f"checked_plan={request.plan.digest}",
+    ]
+
+
+def _profile(profile: str) -> str:
+    """A folder is named from where the user stands, not from where Snakemake runs."""
+    return os.path.abspath(profile) if os.path.isdir(profile) else profile
+
+
+def _all_cores() -> int:
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def _existing_outputs(request: _Request) -> set[str]:
+    return {batch.name for batch in request.plan.batches if (request.work.batches / batch.file_name).exists()}
+
+
+def _finished(
+    request: _Request, before: set[str], reasons: tuple[str, ...], warnings: tuple, log: Path
+) -> RunSummary:
+    marker = read_json(request.work.marker(request.plan.digest))
+    if not isinstance(marker, dict) or marker.get("plan") != request.plan.digest:
+        raise FitlibError(f"the workflow ended without publishing; details in {shown(log)}")
+    account = _account(request, before)
+    return _summary(
+        request,
+        marker,
+        new=marker["new"],
+        note=marker["note"],
+        computed=account.computed.total(),
+        kept=account.kept.total(),
+        reasons=reasons,
+        warnings=warnings,
+        log=shown(log),
+    )
+
+
+def _account(request: _Request, before: set[str]) -> Account:
+    """What jobs of this run computed; the steps of batches that were there before are kept ones."""
+    account = Account()
+    for batch in request.plan.batches:
+        if batch.name in before:
+            for planned in map(request.plan.dataset, batch.members):
+                account.kept.update([*planned.steps, "figures"])
+        elif output := read_batch_output(request.work.batches / batch.file_name, batch):
+            account.add(output["account"])
+    return account
+
+
+def _summary(request: _Request, marker: dict[str, Any], **found) -> RunSummary:
+    return RunSummary(
+        study=request.study.name,
+        revision=marker["revision"],
+        path=os.path.join(request.results_dir, request.study.name, marker["revision"]),
+        rows=tuple(SummaryRow(**row) for row in marker["rows"]),
+        **found,
+    )
+
+

@@ -1,0 +1,165 @@
+"""What the scatter is made of: repeatability, scatter between series, deviation of a level."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy import stats
+
+
+@dataclass(frozen=True)
+class LackOfFit:
+    """Analysis of variance of the residuals of one candidate.
+
+    Attributes
+    ----------
+    f, p : float
+        Ratio of the lack-of-fit to the pure-error mean square, and its upper tail probability.
+    numerator_df, denominator_df : int
+    sum_of_squares, pure_error_sum_of_squares : float
+    """
+
+    f: float
+    p: float
+    numerator_df: int
+    denominator_df: int
+    sum_of_squares: float
+    pure_error_sum_of_squares: float
+
+
+@dataclass(frozen=True)
+class Components:
+    """Standard deviations in the fitted quantity's unit (at weight 1); nan where the design does not show them.
+
+    Attributes
+    ----------
+    repeatability : float
+        Within a level and series.
+    series_deviation : float
+        Between series at a level.
+    pure_error : float
+        Within a level over all series.
+    level_deviation : float
+        What a level carries on its own, shared by its observations.
+    """
+
+    repeatability: float
+    series_deviation: float
+    pure_error: float
+    level_deviation: float
+
+
+def lack_of_fit(residual: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray, parameters: int):
+    """Lack of fit against pure error (Draper & Smith, Applied Regression Analysis, 3rd ed. 1998, sec. 2.1).
+
+    The sums of squares are formed from residuals, so that levels whose stimulus scatters within the tolerance are
+    judged about the curve and not about their mean response; for exact repeats the two are the same.
+
+    Parameters
+    ----------
+    residual : ndarray of shape (n,)
+    root_weights : ndarray of shape (n,)
+    level_index : ndarray of shape (n,), int
+    parameters : int
+
+    Returns
+    -------
+    LackOfFit or None
+        None without replicates, or without levels to spare.
+    """
+    means, weights = level_residuals(residual, root_weights, level_index)
+    levels, n = means.size, residual.size
+    if n <= levels or levels <= parameters:
+        return None
+    lack = float(np.sum(weights * means**2))
+    pure = float(np.sum((root_weights * (residual - means[level_index])) ** 2))
+    if not pure > 0:
+        return None
+    f = lack / (levels - parameters) / (pure / (n - levels))
+    p = float(stats.f.sf(f, levels - parameters, n - levels))
+    return LackOfFit(f, p, levels - parameters, n - levels, lack, pure)
+
+
+def level_residuals(residual: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray):
+    """Weighted mean residual and total weight of each level, two arrays of shape (L,)."""
+    weights = np.bincount(level_index, root_weights**2)
+    return np.bincount(level_index, root_weights**2 * residual) / weights, weights
+
+
+def level_space(design: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray):
+    """What a candidate can describe at the levels, in the scale ``sqrt(W) * level mean``.
+
+    Parameters
+    ----------
+    design : ndarray of shape (n, p)
+        Jacobian at the observations.
+    root_weights : ndarray of shape (n,)
+    level_index : ndarray of shape (n,), int
+
+    Returns
+    -------
+    basis : ndarray of shape (L, p)
+        Orthonormal columns.
+    weights : ndarray of shape (L,)
+        Total weight of each level.
+    """
+    weights = np.bincount(level_index, root_weights**2)
+    sums = np.stack([np.bincount(level_index, root_weights**2 * column) for column in design.T], axis=1)
+    basis, _ = np.linalg.qr(sums / np.sqrt(weights)[:, None])
+    return basis, weights
+
+
+def variance_components(
+    residual: np.ndarray,
+    design: np.ndarray,
+    root_weights: np.ndarray,
+    level_index: np.ndarray,
+    series_index: np.ndarray,
+) -> Components:
+    """Variance components by the method of moments (Searle, Casella & McCulloch, Variance Components, 1992, ch. 5).
+
+    Parameters
+    ----------
+    residual : ndarray of shape (n,)
+    design : ndarray of shape (n, p)
+    root_weights : ndarray of shape (n,)
+    level_index, series_index : ndarray of shape (n,), int
+
+    Returns
+    -------
+    Components
+    """
+    pure, pure_df = _within(residual, root_weights, level_index)
+    cells = np.unique(level_index * (series_index.max() + 1) + series_index, return_inverse=True)[1]
+    repeat, repeat_df = _within(residual, root_weights, cells)
+    pure_variance = pure / pure_df if pure_df else np.nan
+    repeat_variance = repeat / repeat_df if repeat_df else np.nan
+    series_variance = _between_series(pure, repeat, pure_df, repeat_df, root_weights, level_index, cells)
+    level_variance = np.nan
+    basis, weights = level_space(design, root_weights, level_index)
+    spare = weights.size - design.shape[1]
+    if pure_df and spare > 0:
+        means, _ = level_residuals(residual, root_weights, level_index)
+        # E[sum W m^2] = level_variance * tr(M W) + pure_variance * (L - p), with M = I - basis basis^T
+        excess = np.sum(weights * means**2) - pure_variance * spare
+        level_variance = max(0.0, excess / np.sum((1 - np.sum(basis**2, axis=1)) * weights))
+    return Components(*(float(np.sqrt(v)) for v in (repeat_variance, series_variance, pure_variance, level_variance)))
+
+
+def _within(residual: np.ndarray, root_weights: np.ndarray, groups: np.ndarray) -> tuple[float, int]:
+    means, _ = level_residuals(residual, root_weights, groups)
+    return float(np.sum((root_weights * (residual - means[groups])) ** 2)), residual.size - means.size
+
+
+def _between_series(pure, repeat, pure_df, repeat_df, root_weights, level_index, cells) -> float:
+    """Variance between series at a level, where both cells with replicates and levels with several cells exist."""
+    if not repeat_df or pure_df == repeat_df:
+        return np.nan
+    cell_weights = np.bincount(cells, root_weights**2)
+    level_of_cell = np.zeros(cell_weights.size, dtype=int)
+    level_of_cell[cells] = level_index
+    totals = np.bincount(level_of_cell, cell_weights)
+    squares = np.bincount(level_of_cell, cell_weights**2)
+    factor = np.sum(totals - squares / totals)
+    return max(0.0, (pure - repeat - (pure_df - repeat_df) * repeat / repeat_df) / factor)

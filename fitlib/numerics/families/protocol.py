@@ -1,0 +1,78 @@
+"""What a family of candidate functions has to offer; the rest of fitlib asks for nothing else."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import Protocol
+
+import numpy as np
+
+
+@dataclass(frozen=True)
+class Member:
+    """One function of a family.
+
+    Attributes
+    ----------
+    order : int
+        What the family counts its members by (the degree of a polynomial).
+    parameters : int
+        Number of free coefficients.
+    probe : bool
+        True for a member that is fitted only to judge lack of fit, and can never be chosen.
+    """
+
+    order: int
+    parameters: int
+    probe: bool = False
+
+
+class Curve(Protocol):
+    """One member with its coefficients: the function that is issued."""
+
+    def evaluate(self, x: np.ndarray) -> np.ndarray:
+        """Value at each x."""
+
+    def slope(self, x: np.ndarray) -> np.ndarray:
+        """Derivative in x at each x."""
+
+    def jacobian(self, x: np.ndarray) -> np.ndarray:
+        """Derivatives in the coefficients, shape (n, p)."""
+
+    def turning_points(self, lower: float, upper: float) -> np.ndarray:
+        """Points strictly inside the interval where the slope changes sign, ascending."""
+
+    def to_record(self) -> dict:
+        """Numbers and words from which ``families.restore`` makes the same curve."""
+
+
+class Problem(Protocol):
+    """A solver with the data of one dataset, for all members of a family at once."""
+
+    def fit(self) -> Sequence:
+        """One fit for each member."""
+
+    def held_out(self, blocks: Sequence[np.ndarray]):
+        """Residuals of blocks left out."""
+
+    def refit(self, counts: np.ndarray) -> Iterator:
+        """Residuals for resamples."""
+
+    def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> Iterator:
+        """Residuals of blocks left out of each resample."""
+
+
+class Family(Protocol):
+    """The members of one ``families`` entry, made ready for one dataset."""
+
+    members: tuple[Member, ...]
+
+    def problem(self, x: np.ndarray, y: np.ndarray, root_weights: np.ndarray) -> Problem:
+        """Hand data to the family's solver."""
+
+    def curve(self, member: Member, coefficients: np.ndarray) -> Curve:
+        """The function of one member with given coefficients."""
+
+    def two_orders_higher(self, member: Member) -> Member | None:
+        """The member against which lack of fit of ``member`` is judged."""

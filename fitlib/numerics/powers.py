@@ -1,0 +1,132 @@
+"""Coefficients in powers of the stimulus, from the scaled Chebyshev basis, in exact arithmetic and rounded once.
+
+Doubles are whole numbers times powers of two, so that the change of basis can be carried out in rational numbers
+without any rounding; only the published coefficient is rounded.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+
+from fitlib.numerics.families.polynomial import PolynomialCurve, Scale
+
+
+@dataclass(frozen=True)
+class PowerForm:
+    """A polynomial in powers of the stimulus.
+
+    Attributes
+    ----------
+    coefficients : ndarray of shape (degree + 1,)
+        Of ``x^0``, ``x^1``, …; correctly rounded from the issued function.
+    standard_uncertainties : ndarray of shape (degree + 1,)
+    largest_shift : float
+        Largest difference over the interval between the issued function and these rounded coefficients, both in
+        exact arithmetic, in the unit of the fitted quantity.
+    """
+
+    coefficients: np.ndarray
+    standard_uncertainties: np.ndarray
+    largest_shift: float
+
+
+def power_form(curve: PolynomialCurve, covariance: np.ndarray, lower: float, upper: float) -> PowerForm:
+    """Coefficients in powers of the stimulus with their standard uncertainties.
+
+    Parameters
+    ----------
+    curve : PolynomialCurve
+    covariance : ndarray of shape (p, p)
+        Of the scaled coefficients.
+    lower, upper : float
+        Interval over which the shift caused by rounding is computed.
+
+    Returns
+    -------
+    PowerForm
+    """
+    columns, constant = _columns(curve.scale, len(curve.coefficients))
+    exact = _combine(columns, constant, [Fraction(float(value)) for value in curve.coefficients])
+    rounded = [_to_double(value) for value in exact]
+    transform = np.array([[_to_double(value) for value in column] for column in columns]).T
+    # The law of propagation of uncertainty (JCGM 100:2008, eq. 13) for a linear change of basis. The square root of
+    # the covariance is transformed, not the covariance, so that cancellation costs half as many digits.
+    spread = transform @ _root(covariance)
+    return PowerForm(
+        coefficients=np.array(rounded),
+        standard_uncertainties=np.sqrt(np.sum(spread**2, axis=1)),
+        largest_shift=_largest_shift(exact, rounded, lower, upper),
+    )
+
+
+def _columns(scale: Scale, count: int) -> tuple[list[list[Fraction]], list[Fraction]]:
+    """Exact power coefficients of each basis function, and of the part that carries no coefficient."""
+    centre, half = Fraction(scale.centre), Fraction(scale.half_span)
+    u = [-centre / half, 1 / half]
+    basis = [[Fraction(1)], u]
+    while len(basis) < max(count, len(scale.nodal), len(scale.interpolant)):
+        basis.append(_subtract(_multiply([2 * u[0], 2 * u[1]], basis[-1]), basis[-2]))
+    nodal = _series(basis, scale.nodal)
+    constant = _series(basis, scale.interpolant)
+    length = count + len(scale.nodal) - 1
+    columns = [_pad(_multiply(nodal, basis[j]), length) for j in range(count)]
+    return columns, _pad(constant, length)
+
+
+def _series(basis: list[list[Fraction]], coefficients: np.ndarray) -> list[Fraction]:
+    total = [Fraction(0)]
+    for function, value in zip(basis, coefficients, strict=False):
+        total = _subtract(total, [-Fraction(float(value)) * term for term in function])
+    return total
+
+
+def _combine(columns, constant, coefficients) -> list[Fraction]:
+    rows = zip(constant, *columns, strict=True)
+    return [row[0] + sum(a * b for a, b in zip(row[1:], coefficients, strict=True)) for row in rows]
+
+
+def _multiply(a: list[Fraction], b: list[Fraction]) -> list[Fraction]:
+    product = [Fraction(0)] * (len(a) + len(b) - 1)
+    for i, left in enumerate(a):
+        for j, right in enumerate(b):
+            product[i + j] += left * right
+    return product
+
+
+def _subtract(a: list[Fraction], b: list[Fraction]) -> list[Fraction]:
+    length = max(len(a), len(b))
+    return [left - right for left, right in zip(_pad(a, length), _pad(b, length), strict=True)]
+
+
+def _pad(a: list[Fraction], length: int) -> list[Fraction]:
+    return list(a) + [Fraction(0)] * (length - len(a))
+
+
+def _to_double(value: Fraction) -> float:
+    try:
+        return float(value)  # Python rounds a ratio of whole numbers to nearest even
+    except OverflowError:
+        return float("inf") if value > 0 else float("-inf")
+
+
+def _root(covariance: np.ndarray) -> np.ndarray:
+    values, vectors = np.linalg.eigh(covariance)
+    return vectors * np.sqrt(np.clip(values, 0, None))
+
+
+def _largest_shift(exact: list[Fraction], rounded: list[float], lower: float, upper: float) -> float:
+    if not all(np.isfinite(rounded)):
+        return float("inf")
+    change = [a - Fraction(b) for a, b in zip(exact, rounded, strict=True)]
+    points = [Fraction(lower) + (Fraction(upper) - Fraction(lower)) * k / 64 for k in range(65)]
+    return _to_double(max(abs(_horner(change, point)) for point in points))
+
+
+def _horner(coefficients: list[Fraction], x: Fraction) -> Fraction:
+    total = Fraction(0)
+    for value in reversed(coefficients):
+        total = total * x + value
+    return total
