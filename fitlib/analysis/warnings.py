@@ -7,6 +7,8 @@ from fitlib.analysis.words import amount, counted, figure, listed
 
 #: Excursions beyond the neighbouring observations larger than this many residual standard deviations are told.
 LARGE_EXCURSION = 3.0
+#: A candidate that the rule takes in a smaller share of the resamples is called unstable.
+SMALL_SHARE = 0.5
 
 
 def collect_warnings(result: dict, study, dataset, observations) -> list[str]:
@@ -116,6 +118,19 @@ def _shape(result: dict, chosen: dict) -> list[str]:
     ]
 
 
+def _stability(result: dict, chosen: dict) -> list[str]:
+    """Say so when most resamples take another candidate."""
+    shares = {item["candidate"]: item["bootstrap_share"] for item in result["candidates"]}
+    share = shares[chosen["candidate"]]
+    if share is None or share >= SMALL_SHARE:
+        return []
+    rival = max(shares, key=lambda name: shares[name] or 0.0)
+    return [
+        f"the choice is not stable: the rule takes {chosen['candidate']} in {share:.0%} of the resamples"
+        + (f", {rival} in {shares[rival]:.0%}" if rival != chosen["candidate"] else "")
+    ]
+
+
 def _rivals(result: dict, chosen: dict) -> list[str]:
     selection, lines = result["selection"], []
     if selection["choice"] == "tie":
@@ -129,6 +144,7 @@ def _rivals(result: dict, chosen: dict) -> list[str]:
         lines.append(
             f"the selection repeated without one level takes another candidate: {named} of {selection['outer_folds']}"
         )
+    lines += _stability(result, chosen)
     by_series = selection["rankings"].get("leave_one_series_out")
     parameters = {item["candidate"]: item["parameters"] for item in result["candidates"]}
     if by_series is not None and parameters[by_series] > parameters[chosen["candidate"]]:

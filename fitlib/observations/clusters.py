@@ -141,12 +141,12 @@ def _chance_without_crowd(centres: np.ndarray, group: np.ndarray, visits: np.nda
     return _chance_of(centres[kept], np.unique(group[kept], return_inverse=True)[1])
 
 
-def _best_grouping(centres: np.ndarray, label: np.ndarray, series: np.ndarray) -> np.ndarray | None:
-    """The least likely grouping of ascending values that passes every condition, as group numbers; or None."""
+def _best_grouping(centres: np.ndarray, label: np.ndarray, series: np.ndarray) -> tuple[float, np.ndarray | None]:
+    """The least likely grouping of ascending values that passes every condition: its chance and group numbers."""
     gaps = np.diff(centres)
     ordered = np.sort(gaps)
     if ordered.size < 2 or ordered[0] <= 0:
-        return None
+        return 0.0, None
     visits = _visits(label, series, centres.size)
     best, grouping = math.log(LEAST_CHANCE), None
     for small in np.flatnonzero(ordered[1:] >= LEAST_RATIO * ordered[:-1]):
@@ -154,18 +154,41 @@ def _best_grouping(centres: np.ndarray, label: np.ndarray, series: np.ndarray) -
         chance = _chance_without_crowd(centres, group, visits)
         if chance < best and _is_scatter(group, label, series, visits):
             best, grouping = chance, group
-    return grouping
+    return best, grouping
 
 
-def _grow(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> np.ndarray | None:
+def _grow(centres: np.ndarray, label: np.ndarray, series: np.ndarray) -> tuple[float, np.ndarray | None]:
     """Group, then group the groups, as long as the signs hold: replicates scatter less than series do."""
-    centres, whole = values, None
-    while (group := _best_grouping(centres, label, series)) is not None:
-        whole = group if whole is None else group[whole]
+    chance, group = _best_grouping(centres, label, series)
+    whole, least = group, chance
+    while group is not None:
         label = group[label]
         firsts, lasts = _edges(group)
         centres = (centres[firsts] + centres[lasts]) / 2
-    return whole
+        chance, group = _best_grouping(centres, label, series)
+        if group is not None:
+            whole, least = group[whole], min(chance, least)
+    return least, whole
+
+
+def _grow_by_ratio(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> tuple[float, np.ndarray | None]:
+    """Groups on the logarithm of values of one sign; a value of exactly zero is a group of its own."""
+    if values[0] < 0 and values[-1] <= 0:
+        chance, group = _grow_by_ratio(-values[::-1], values.size - 1 - label, series)
+        return chance, None if group is None else group[-1] - group[::-1]
+    if values[0] < 0:
+        return 0.0, None
+    zero = int(values[0] == 0)
+    above = label >= zero
+    chance, group = _grow(np.log(values[zero:]), label[above] - zero, series[above])
+    return chance, None if group is None else np.concatenate(([0] * zero, group + zero)).astype(int)
+
+
+def _grow_on_both_scales(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> np.ndarray | None:
+    """Groups on the stimulus, or on its logarithm where they are less likely there."""
+    chance, group = _grow(values, label, series)
+    chance_of_ratios, by_ratio = _grow_by_ratio(values, label, series)
+    return by_ratio if by_ratio is not None and (group is None or chance_of_ratios < chance) else group
 
 
 def _between(width: float, gap: float) -> float | None:
@@ -234,9 +257,7 @@ def find_clusters(stimulus: np.ndarray, series: np.ndarray) -> Clusters | None:
     values, label = np.unique(stimulus, return_inverse=True)
     if values.size < 4:
         return None
-    group = _grow(values, label, series)
-    if group is None and (values[0] > 0 or values[-1] < 0):
-        group = _grow_by_ratio(values, label, series)
+    group = _grow_on_both_scales(values, label, series)
     if group is not None:
         return _described("groups", values, group)
     if np.unique(series).size > 1 and _few_repeats(values, label, series):
@@ -245,10 +266,3 @@ def find_clusters(stimulus: np.ndarray, series: np.ndarray) -> Clusters | None:
             return Clusters("few repeats", values.size, _closest(values))
         return _described("few repeats", values, group)
     return None
-
-
-def _grow_by_ratio(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> np.ndarray | None:
-    if values[0] > 0:
-        return _grow(np.log(values), label, series)
-    group = _grow(np.log(-values[::-1]), values.size - 1 - label, series)
-    return None if group is None else group[-1] - group[::-1]

@@ -32,7 +32,7 @@ class Levels:
 
 
 def reach(tolerance: float, stimulus: np.ndarray) -> float:
-    """The tolerance with room for the rounding of decimal numbers: 0.3 - 0.28 counts as 0.02."""
+    """The tolerance with room for the rounding of decimal numbers: 1.02 - 1.0 counts as 0.02."""
     if tolerance == 0.0 or stimulus.size == 0:
         return tolerance
     return tolerance * (1 + 1e-9) + 4 * np.finfo(float).eps * float(np.max(np.abs(stimulus)))

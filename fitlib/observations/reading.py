@@ -6,6 +6,7 @@ import hashlib
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from pathlib import PurePosixPath
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -20,13 +21,16 @@ from fitlib.observations.records import FileAccount, Observations
 from fitlib.observations.tables import Table, read_table
 from fitlib.observations.wording import number, plural, quoted
 
+if TYPE_CHECKING:  # for the reader of the code; pydantic need not be loaded to read a CSV file
+    from fitlib.study import DatasetSettings, Study
+
 
 @dataclass
 class _Reading:
     """What is known of a dataset while it is read."""
 
-    study: object
-    dataset: object
+    study: Study
+    dataset: DatasetSettings
     faults: list[Faults] = field(default_factory=list)
     files: list[FileRows] = field(default_factory=list)
     problems: list[Problem] = field(default_factory=list)
@@ -224,7 +228,7 @@ def _build(reading: _Reading, rows: Rows, grouped: Grouped, excluded: dict, acco
     )
 
 
-def read_observations(study, dataset) -> Observations:
+def read_observations(study: Study, dataset: DatasetSettings) -> Observations:
     """Read the observations of one dataset.
 
     Parameters
@@ -262,7 +266,7 @@ def read_observations(study, dataset) -> Observations:
     return built
 
 
-def check_observations(study) -> tuple[list[Problem], list[Observations]]:
+def check_observations(study: Study) -> tuple[list[Problem], list[Observations]]:
     """Read all datasets of a study.
 
     Parameters
