@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterable
 from os import PathLike, fspath
 from pathlib import Path
-from typing import Any
 
 from pydantic import ValidationError
 
@@ -51,13 +50,11 @@ def load_study(path: str | PathLike[str]) -> Study:
     text = read_bytes(path)
     document = _read(path, decode(path, text))
     model, findings = _validate(document)
-    draft, found = None, []
-    if model is not UNKNOWN:
-        draft, found, more = _check_rules(model, StudyFolder(Path(path).parent, Path(path)))
-        findings += more
-    findings += [(fault.key, fault.message) for fault in document.faults]
-    if findings:
-        raise InputError(_problems(path, document, findings))
+    draft, found, more = _check_rules(model, StudyFolder(Path(path).parent, Path(path)))
+    told = {key for key, _ in findings}
+    findings += [(key, message) for key, message in more if key not in told]
+    if findings or document.faults:
+        raise InputError(_in_order([*_refused(path, document), *_problems(path, document, findings)]))
     return _study(path, text, document, draft, found)
 
 
@@ -73,7 +70,7 @@ def _read(path: str, text: str) -> Document:
     return document
 
 
-def _validate(document: Document) -> tuple[StudyModel | Any, list[Finding]]:
+def _validate(document: Document) -> tuple[StudyModel, list[Finding]]:
     """Return the model, with `UNKNOWN` in place of faulty values, and what is wrong with them."""
     try:
         return StudyModel.model_validate(document.data), []
@@ -102,12 +99,20 @@ def _check_rules(model: StudyModel, folder: StudyFolder) -> tuple[Draft, list[Fo
 
 
 def _problems(path: str, document: Document, findings: Iterable[Finding], severity: str = "error") -> list[Problem]:
-    """Return problems in the order of the file, each one once."""
-    shown_path = printable(path)
-    problems = [
-        Problem(shown_path, message, line_of(document.lines, key), None, key, severity)
+    """Return each finding once, with its line."""
+    return [
+        Problem(printable(path), message, line_of(document.lines, key), None, key, severity)
         for key, message in dict.fromkeys(findings)
     ]
+
+
+def _refused(path: str, document: Document) -> list[Problem]:
+    """Return what the YAML reader refused; it knows the line of a key that is given twice."""
+    return [Problem(printable(path), fault.message, fault.line, None, fault.key) for fault in document.faults]
+
+
+def _in_order(problems: Iterable[Problem]) -> list[Problem]:
+    """Return problems in the order of the file."""
     return sorted(problems, key=lambda problem: (problem.line or 0, problem.key))
 
 
@@ -129,6 +134,6 @@ def _study(path: str, text: bytes, document: Document, draft: Draft, found: list
         weighting=model.weighting,
         validation=tuple(draft.schemes),
         selection=build_selection(draft),
-        warnings=tuple(_problems(path, document, warnings_of(draft), "warning")),
+        warnings=tuple(_in_order(_problems(path, document, warnings_of(draft), "warning"))),
         lines=document.lines,
     )

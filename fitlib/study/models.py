@@ -42,11 +42,15 @@ Where = Annotated[dict[Word, WhereValue], Field(min_length=1)]
 
 
 class QuantityGroup(Model):
+    """A quantity and its unit."""
+
     quantity: Word
     unit: Word
 
 
 class ColumnsGroup(Model):
+    """Names of the columns of a data file; which ones are needed is known after `dataset_defaults` is merged in."""
+
     stimulus: Word | None = None
     response: Word | None = None
     series: Word | None = None
@@ -55,6 +59,8 @@ class ColumnsGroup(Model):
 
 
 class ExclusionEntry(Model):
+    """Observations left out on purpose; every key is needed."""
+
     where: Where
     reason: Line
     person: Word
@@ -62,6 +68,8 @@ class ExclusionEntry(Model):
 
 
 class VerificationGroup(Model):
+    """Observations kept out of fitting and choosing."""
+
     where: Where
 
 
@@ -85,6 +93,8 @@ class DatasetDefaults(DatasetKeys):
 
 
 class NamedDataset(DatasetKeys):
+    """One dataset with its id and files."""
+
     id: DatasetId
     files: Annotated[list[Path], Field(min_length=1)]
 
@@ -96,16 +106,22 @@ class DatasetPattern(DatasetKeys):
 
 
 class RequireGroup(Model):
+    """Conditions for being eligible."""
+
     monotone: Flag | None = None
-    degrees_of_freedom: whole(2, 1000) = 3
+    degrees_of_freedom: whole(2) = 3
 
 
 class TargetGroup(Model):
+    """Target uncertainty, in the unit of the evaluated quantity."""
+
     expanded: positive()
     coverage_factor: positive()
 
 
 class SelectionGroup(Model):
+    """How one candidate is chosen."""
+
     loss: Word | None = None
     rule: choice(*RULES)
     alpha: positive(below=1) | None = None

@@ -11,7 +11,18 @@ DEVICES = frozenset({"con", "prn", "aux", "nul"} | {f"{port}{n}" for port in ("c
 
 
 def file_name_of(dataset_id: str) -> str:
-    """Return the id where it is a safe file name, else ``d~`` and 16 hexadecimal digits of its SHA-256."""
+    """Return the name under which the files of a dataset stand.
+
+    Parameters
+    ----------
+    dataset_id : str
+
+    Returns
+    -------
+    str
+        The id where it is a safe file name (`SAFE`, no name of a device, no point at its end), else ``d~`` and 16
+        hexadecimal digits of its SHA-256.
+    """
     device = dataset_id.split(".")[0].lower() in DEVICES
     if SAFE.fullmatch(dataset_id) and not device and not dataset_id.endswith("."):
         return dataset_id

@@ -8,7 +8,7 @@ from __future__ import annotations
 from dataclasses import asdict
 from typing import Any
 
-# The name of the file and the place in the study say nothing about what is fitted.
+# The place of an entry in the file says nothing about what is fitted.
 NOT_SETTINGS = ("key",)
 
 
@@ -42,7 +42,17 @@ def resolve(study: Any) -> dict[str, Any]:
 
 
 def resolve_dataset(dataset: Any) -> dict[str, Any]:
-    """Return the settings of one dataset as plain data; `verification_points` keeps its ``where``."""
+    """Return the settings of one dataset as plain data.
+
+    Parameters
+    ----------
+    dataset : DatasetSettings
+
+    Returns
+    -------
+    dict
+        JSON-able; `verification_points` keeps its ``where``, and the place of the entry in the file is left out.
+    """
     settings = {name: value for name, value in asdict(dataset).items() if name not in NOT_SETTINGS}
     if dataset.verification_points is not None:
         settings["verification_points"] = {"where": dataset.verification_points}

@@ -27,8 +27,8 @@ def export_schema() -> dict[str, Any]:
 
 
 def schema_text() -> str:
-    """Return the schema as it is shipped in `study.schema.json`."""
-    return json.dumps(export_schema(), indent=1, sort_keys=True, ensure_ascii=False) + "\n"
+    """Return the schema as it is shipped in `study.schema.json`; ``fitlib schema`` prints the same."""
+    return json.dumps(export_schema(), indent=2, ensure_ascii=False) + "\n"
 
 
 def shipped_schema_text() -> str:

@@ -212,11 +212,23 @@ class Study:
     lines: Mapping[str, int] = field(default_factory=dict, repr=False, compare=False)
 
     def line_of(self, key: str) -> int | None:
-        """Return the line of a dotted key such as ``datasets[0].files``, or of its nearest parent in the file."""
+        """Return the line of a dotted key, or of its nearest parent in the file.
+
+        Parameters
+        ----------
+        key : str
+            For example ``datasets[0].files``.
+        """
         return line_of(self.lines, key)
 
     def requires_monotone(self, dataset: DatasetSettings) -> bool:
-        """Tell whether a candidate must be strictly monotone for this dataset."""
+        """Tell whether a candidate must be strictly monotone for this dataset.
+
+        Parameters
+        ----------
+        dataset : DatasetSettings
+            One of `datasets`.
+        """
         return dataset.evaluation == "inverse" or self.selection.monotone
 
     def resolved(self) -> dict[str, Any]:

@@ -17,6 +17,7 @@ from fitlib.study.shown import printable, shown
 from fitlib.study.unknown import UNKNOWN
 
 DEEPEST = 20  # the study format itself needs seven
+TOO_DEEP = f"nested more than {DEEPEST} levels deep; a study needs fewer"
 PARSER = getattr(yaml, "CSafeLoader", yaml.SafeLoader)  # the C parser is ten times faster and gives the same events
 
 
@@ -109,7 +110,7 @@ class _Builder:
         value = self._value(event, key, line)
         if isinstance(event, yaml.CollectionStartEvent):
             if len(self.open) >= DEEPEST:
-                raise YamlFault(f"nested more than {DEEPEST} levels deep; a study needs fewer", line)
+                raise YamlFault(TOO_DEEP, line)
             self.open.append(_Open(value, key, kept))
         self._attach(frame, value)
 
@@ -143,7 +144,7 @@ class _Builder:
         frame.pending, frame.pending_kept = name, False
         if not isinstance(word, str):
             what = "an empty key" if name == "" else f"the key {shown(name)} is not text"
-            self._fault(key, line, f"{what}; put it in quotes if it is meant as a name")
+            self._fault(key, line, f"{what}; put it in quotes if it is meant as a name", hides=True)
         elif name in frame.values:
             first = self.document.lines[key]
             self._fault(key, line, f"the key is given twice; first in line {first}")
@@ -199,6 +200,8 @@ def _syntax(fault: yaml.MarkedYAMLError, text: str) -> YamlFault:
     problem = printable(fault.problem or fault.context or "cannot be read")
     if mark is None:
         return YamlFault(f"YAML syntax: {problem}")
+    if "nesting depth" in problem:  # the C parser reads ahead of its events and has a limit of its own
+        return YamlFault(TOO_DEEP, mark.line + 1)
     lines = text.splitlines()
     here = lines[mark.line] if mark.line < len(lines) else ""
     hint = "; indent with spaces, not with a tab" if here[: mark.column + 1].strip(" ").startswith("\t") else ""
