@@ -55,16 +55,16 @@ def stepped(zero: float, gain: float, half_step: float, place: float, width: flo
 
 
 SENSORS = {
-    "LS-101": Sensor(101, straight(4.012, 1.5985), LEVELS),
+    "LS-101": Sensor(110, straight(4.012, 1.5985), LEVELS),
     "LS-102": Sensor(102, bowed(3.995, 1.6003, 0.048), LEVELS, readings=2),
     "LS-103": Sensor(103, saturating(4.004, 1.6020, 1.2), LEVELS, readings=2),
     "LS-104": Sensor(104, straight(3.989, 1.6012), LEVELS, readings=2),
     "LS-105": Sensor(105, bowed(4.007, 1.5991, -0.040), LEVELS, runs=(1, 2, 3, 4), hysteresis=0.004),
-    "LS-106": Sensor(106, stepped(4.060, 1.5900, 0.080, 6.2, 0.35), HALF_METRES, readings=2),
+    "LS-106": Sensor(106, stepped(4.060, 1.5900, 0.100, 6.2, 0.35), HALF_METRES, readings=2),
     "LS-107": Sensor(107, bowed(4.001, 1.6008, 0.052), LEVELS, setting_scatter=0.015),
-    "LS-108": Sensor(108, straight(4.003, 1.5996), LEVELS, readings=3, level_deviation=3 * REPEATABILITY),
+    "LS-108": Sensor(109, straight(4.003, 1.5996), LEVELS, readings=3, level_deviation=3 * REPEATABILITY),
 }
-VERIFICATION = Sensor(1101, SENSORS["LS-101"].shape, BETWEEN_LEVELS, runs=(4,))
+VERIFICATION = Sensor(1110, SENSORS["LS-101"].shape, BETWEEN_LEVELS, runs=(4,))
 
 BAD_READING = {"run": 2, "level": 7.0, "reading": 1, "shift": 0.060}  # LS-104, mA: nobody knows why
 MOVED_CABLE = {"run": 3, "level": 7.0, "shift": -0.210}  # LS-105, mA: noted in the log and excluded in the study

@@ -29,6 +29,7 @@ _EMPTY = {
     "aicc_levels": None,
     "bic_levels": None,
     "condition_number": None,
+    "exact": None,
     "monotone": None,
     "turning_points": [],
     "excursion": None,
@@ -166,7 +167,7 @@ def _observation_table(observations, data: DatasetArrays, candidates: CandidateS
     flag = [""] * count
     if chosen is not None:
         _fill_used(values, flag, data, candidates, chosen)
-        _fill_verification(values, observations, chosen, data.x is data.stimulus)
+        _fill_verification(values, observations, chosen, data.swapped)
     return table | {name: numbers(values[name]) for name in columns} | {"flag": flag}
 
 
@@ -179,17 +180,19 @@ def _fill_used(values: dict, flag: list[str], data: DatasetArrays, candidates: C
     values["residual"][data.rows] = residual
     values["leverage"][data.rows] = fit.leverage
     values["studentized_residual"][data.rows] = studentized
+    if chosen["exact"]:
+        return  # residuals are rounding: nothing to suspect
     for row in data.rows[suspects(studentized, chosen["parameters"])]:
         flag[row] = "suspect"
 
 
-def _fill_verification(values: dict, observations, chosen: dict, x_is_stimulus: bool) -> None:
+def _fill_verification(values: dict, observations, chosen: dict, swapped: bool) -> None:
     rows = np.array([k for k, state in enumerate(observations.state) if state == "verification"], dtype=int)
     if not rows.size:
         return
     stimulus = np.asarray(observations.stimulus, dtype=float)[rows]
     response = np.asarray(observations.response, dtype=float)[rows]
-    x, y = (stimulus, response) if x_is_stimulus else (response, stimulus)
+    x, y = (response, stimulus) if swapped else (stimulus, response)
     values["fitted"][rows] = restore(chosen["scaled"]).evaluate(x)
     values["residual"][rows] = y - values["fitted"][rows]
 

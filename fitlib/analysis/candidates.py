@@ -73,7 +73,8 @@ class CandidateSet:
         if number not in self.made:
             settings = self._families[number]
             orders = [item.order for item in items]
-            self.made[number] = make_family(settings.family, self.data.x, orders, settings.fixed_points)
+            points = [point[::-1] if self.data.swapped else point for point in settings.fixed_points]
+            self.made[number] = make_family(settings.family, self.data.x, orders, points)
         family = self.made[number]
         problem = family.problem(self.data.x, self.data.y, self.data.root_weights)
         self._groups[number] = _Group(family, problem, tuple(member.parameters for member in family.members))
@@ -164,6 +165,9 @@ def declared_candidates(families) -> list[Declared]:
     ]
 
 
-def supported(declared: Sequence[Declared], levels: int) -> list[Declared]:
-    """Candidates with at least two levels more than parameters."""
-    return [item for item in declared if levels >= item.parameters + 2 and levels >= 2]
+def supported(declared: Sequence[Declared], data: DatasetArrays) -> list[Declared]:
+    """Candidates with at least two levels more than parameters; none where the independent variable is constant."""
+    levels = data.levels.size
+    if levels < 2 or not np.ptp(data.x) > 0:
+        return []
+    return [item for item in declared if levels >= item.parameters + 2]

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from fitlib.analysis.candidates import DRAWS_AT_ONCE, CandidateSet
+from fitlib.analysis.fits import loss_floor
 from fitlib.analysis.jsonable import number
 from fitlib.analysis.schemes import FEWEST_FOLDS_TO_DECIDE, evaluate_scheme, make_units
 from fitlib.analysis.streams import draw_counts
@@ -18,8 +19,6 @@ from fitlib.numerics.validation import Fold, level_means, summarise, unit_folds,
 
 #: With more levels than this, outer folds and folds within resamples are interleaved groups of levels.
 MOST_LEVEL_FOLDS = 60
-#: Losses below (this * epsilon * largest |y|)^2 are rounding.
-FLOOR_IN_EPSILON = 64
 
 
 @dataclass(frozen=True)
@@ -49,11 +48,6 @@ def make_rule(study, dataset) -> Rule:
     scheme = next((scheme for scheme in study.validation if scheme.id == selection.loss), None)
     alpha = 0.05 if selection.alpha is None else selection.alpha
     return Rule(selection.rule, scheme, alpha, study.random_seed, dataset.id)
-
-
-def floor_of(candidates: CandidateSet) -> float:
-    """Loss below which candidates cannot be told apart, in the squared unit of the fitted quantity."""
-    return float((FLOOR_IN_EPSILON * np.finfo(float).eps * np.max(np.abs(candidates.data.y))) ** 2)
 
 
 def eligibility(candidates: CandidateSet, records: dict, deciding: dict | None, study, dataset) -> dict[str, list[str]]:
@@ -149,12 +143,19 @@ def evidence_for(candidates: CandidateSet, rule: Rule, stream_names: tuple = ())
     losses = np.full((len(candidates.entries), data.levels.size), np.nan)
     if rule.name in LOSS_RULES:
         names = (rule.dataset_id, rule.scheme.id, *stream_names)
-        outcome = evaluate_scheme(candidates, rule.scheme, rule.seed, names)
+        outcome = evaluate_scheme(candidates, _fitting(rule.scheme, data), rule.seed, names)
         if outcome.message:
             return None
         losses = outcome.loss.levels
     squares = np.array([_level_squares(fit, data) for fit in candidates.fit()])
-    return Evidence(candidates.parameters, losses, data.level_weights, squares, floor_of(candidates))
+    return Evidence(candidates.parameters, losses, data.level_weights, squares, loss_floor(data))
+
+
+def _fitting(scheme, data):
+    """The deciding scheme with no more folds than an outer fold has left."""
+    if scheme.scheme != "k_fold":
+        return scheme
+    return replace(scheme, folds=min(scheme.folds, len(make_units(data, scheme.unit).labels)))
 
 
 def _level_squares(fit, data) -> float:
@@ -279,7 +280,7 @@ def _evidence_of_draw(candidates: CandidateSet, draw: np.ndarray, residual: np.n
     else:
         means = level_means(used, weights, data.level_index, data.levels.size)[:, drawn]
         squares = np.where(undetermined, np.nan, means**2 @ level_weights[drawn])
-    return Evidence(candidates.parameters, losses, level_weights[drawn], squares, floor_of(candidates))
+    return Evidence(candidates.parameters, losses, level_weights[drawn], squares, loss_floor(data))
 
 
 def interior_choice(evidence: Evidence, rule: Rule, eligible: np.ndarray) -> int | None:

@@ -29,7 +29,10 @@ class DatasetArrays:
     interval : (float, float)
         Measuring interval, in the unit of the stimulus.
     x_interval : (float, float)
-        The same interval in the independent variable.
+        The same interval in the independent variable; for an analysis function by interpolation between the mean
+        responses of the levels, as no candidate is preferred here.
+    swapped : bool
+        True for an analysis function: x is the response.
     """
 
     rows: np.ndarray
@@ -43,6 +46,7 @@ class DatasetArrays:
     series: tuple[str, ...]
     interval: tuple[float, float]
     x_interval: tuple[float, float]
+    swapped: bool = False
 
     @property
     def level_weights(self) -> np.ndarray:
@@ -101,7 +105,8 @@ def make_arrays(study, dataset, observations) -> DatasetArrays:
         levels=levels,
         series=series,
         interval=(float(interval[0]), float(interval[1])),
-        x_interval=_span_within(response, stimulus, interval) if swap else (float(interval[0]), float(interval[1])),
+        x_interval=_between_levels(response, stimulus, level_index, interval) if swap else tuple(map(float, interval)),
+        swapped=swap,
     )
 
 
@@ -119,6 +124,9 @@ def _canonical_order(observations) -> np.ndarray:
     return np.array(used, dtype=int)
 
 
-def _span_within(response: np.ndarray, stimulus: np.ndarray, interval) -> tuple[float, float]:
-    inside = response[(stimulus >= interval[0]) & (stimulus <= interval[1])]
-    return float(inside.min()), float(inside.max())
+def _between_levels(response: np.ndarray, stimulus: np.ndarray, level_index: np.ndarray, interval):
+    counts = np.bincount(level_index)
+    at = np.bincount(level_index, stimulus) / counts
+    means = np.bincount(level_index, response) / counts
+    ends = np.interp(interval, at, means)
+    return float(ends.min()), float(ends.max())

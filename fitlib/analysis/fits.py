@@ -24,6 +24,8 @@ from fitlib.numerics.validation import standard_error
 
 #: Probability below which lack of fit is called significant (common practice, no source).
 SIGNIFICANT = 0.05
+#: Losses below (this * epsilon * largest |y|)^2 are rounding.
+FLOOR_IN_EPSILON = 64
 
 
 def fit_candidates(candidates: CandidateSet, study, dataset) -> dict:
@@ -57,8 +59,9 @@ def fit_candidates(candidates: CandidateSet, study, dataset) -> dict:
 
 def _unsupported(item: Declared, data: DatasetArrays) -> dict:
     levels = data.levels.size
-    if levels < 2:
-        return _not_fitted(item, data, "the stimulus is constant: no function of it can be fitted")
+    if not np.ptp(data.x) > 0:
+        name = "response" if data.swapped else "stimulus"
+        return _not_fitted(item, data, f"the {name} is constant: no function of it can be fitted")
     need = item.parameters + 2
     parameters = "1 parameter needs" if item.parameters == 1 else f"{item.parameters} parameters need"
     return _not_fitted(item, data, f"{parameters} at least {need} levels; there are {levels}")
@@ -86,7 +89,8 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
     design = curve.jacobian(data.x)
     lack = lack_of_fit(fit.residual, data.root_weights, data.level_index, item.parameters)
     parts = variance_components(fit.residual, design, data.root_weights, data.level_index, data.series_index)
-    found = bool(lack is not None and lack.p < SIGNIFICANT and parts.level_deviation > 0)
+    exact = is_exact(fit.residual_sum_of_squares, data)
+    found = bool(not exact and lack is not None and lack.p < SIGNIFICANT and parts.level_deviation > 0)
     spread = _spread(fit, parts, item, data, found)
     covariance = coefficient_covariance(
         design, data.root_weights, fit.inverse_normal, data.level_index, spread["variance"], spread["level_variance"]
@@ -94,7 +98,7 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
     power = power_form(curve, covariance, *data.x_interval)
     return (
         _heading(item, data)
-        | {"status": "fitted", "message": ""}
+        | {"status": "fitted", "message": "", "exact": exact}
         | _sizes(fit, item, data)
         | _shape(curve, fit, data)
         | _misfit(curve, fit, design, data, dataset, lack, gain)
@@ -115,6 +119,35 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
             "scaled": curve.to_record(),
         }
     )
+
+
+def is_exact(weighted_sum_of_squares: float, data: DatasetArrays) -> bool:
+    """Whether a fit leaves nothing but rounding.
+
+    Parameters
+    ----------
+    weighted_sum_of_squares : float
+    data : DatasetArrays
+
+    Returns
+    -------
+    bool
+    """
+    return bool(weighted_sum_of_squares <= loss_floor(data) * np.sum(data.root_weights**2))
+
+
+def loss_floor(data: DatasetArrays) -> float:
+    """Loss below which candidates cannot be told apart, in the squared unit of the fitted quantity.
+
+    Parameters
+    ----------
+    data : DatasetArrays
+
+    Returns
+    -------
+    float
+    """
+    return float((FLOOR_IN_EPSILON * np.finfo(float).eps * np.max(np.abs(data.y))) ** 2)
 
 
 def _spread(fit, parts: Components, item: Declared, data: DatasetArrays, found: bool) -> dict:
@@ -245,4 +278,4 @@ def make_candidates(data: DatasetArrays, study) -> CandidateSet:
     -------
     CandidateSet
     """
-    return CandidateSet(data, supported(declared_candidates(study.families), data.levels.size), study.families)
+    return CandidateSet(data, supported(declared_candidates(study.families), data), study.families)

@@ -7,6 +7,7 @@ import numpy as np
 from fitlib.analysis.dataset import DatasetArrays
 from fitlib.analysis.words import figure
 from fitlib.numerics.families import restore
+from fitlib.numerics.inverse import inverse_evaluation
 from fitlib.numerics.weighting import spread
 
 #: Test vectors inside the interval, both ends included.
@@ -131,13 +132,21 @@ def _response_at_ends(dataset, curve, data: DatasetArrays) -> list[float]:
     if dataset.function != "analysis":
         return [float(value) for value in curve.evaluate(np.array(data.interval))]
     first, last = curve.evaluate(np.array(data.x_interval))
-    ends = list(data.x_interval)
-    return ends if first <= last else ends[::-1]
+    ends = data.x_interval if first <= last else data.x_interval[::-1]
+    return [_response_near(curve, data, value, end) for value, end in zip(data.interval, ends, strict=True)]
+
+
+def _response_near(curve, data: DatasetArrays, stimulus: float, expected: float) -> float:
+    """Response at which an analysis function gives an end of the interval; the expected one where it is not unique."""
+    margin = (data.x_interval[1] - data.x_interval[0]) / 10
+    found = inverse_evaluation(curve, stimulus, data.x_interval[0] - margin, data.x_interval[1] + margin)
+    return found.value if found.verdict == "within_interval" else expected
 
 
 def _test_vectors(dataset, curve, data: DatasetArrays, monotone: bool) -> list[dict]:
     """Pairs of stimulus and response inside the interval, and two outside with the verdict expected."""
-    grid = np.linspace(*data.x_interval, VECTORS_INSIDE)
+    ends = _response_at_ends(dataset, curve, data) if data.swapped else data.interval
+    grid = np.linspace(*ends, VECTORS_INSIDE)
     values = curve.evaluate(grid)
     pairs = zip(values, grid, strict=True) if dataset.function == "analysis" else zip(grid, values, strict=True)
     ordered = sorted(pairs)

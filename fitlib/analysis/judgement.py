@@ -5,8 +5,8 @@ from __future__ import annotations
 from fitlib.analysis.fits import SIGNIFICANT
 from fitlib.analysis.words import amount, figure, listed, probability
 
-#: Without replicates, fewer levels than this cannot show a smooth misfit.
-FEWEST_LEVELS_WITHOUT_REPLICATES = 7
+#: Fewer levels than this cannot show a smooth misfit.
+FEWEST_LEVELS = 7
 #: Probability below which level residuals count as serially correlated.
 SERIAL_PROBABILITY = 0.01
 #: Paired standard errors by which a candidate two orders higher must lower the level loss.
@@ -34,17 +34,27 @@ def judge(record: dict, levels: int, replicates: bool, target: float | None, uni
     -------
     verdict, reason : str
     """
-    if not replicates and levels < FEWEST_LEVELS_WITHOUT_REPLICATES:
+    if not replicates and levels < FEWEST_LEVELS:
         return "not_evaluated", (
             f"without replicates and with {levels} levels a lack of fit could not be seen; "
-            f"replicates or at least {FEWEST_LEVELS_WITHOUT_REPLICATES} levels are needed"
+            f"replicates or at least {FEWEST_LEVELS} levels are needed"
         )
+    if record["exact"]:
+        return "adequate", "the fit leaves nothing but rounding"
     lack = record["lack_of_fit"]
     significant = lack is not None and lack["p"] < SIGNIFICANT
     smooth = _smooth_signs(record)
     against = _against_pure_error(lack)
     if lack is not None and not significant:
         return "adequate", f"no lack of fit against pure error ({against})"
+    size = "" if record["misfit"] is None else f"largest mean deviation of a level {amount(record['misfit'], unit)}"
+    within_target = target is not None and record["misfit"] is not None and record["misfit"] <= target
+    if not smooth and lack is not None and levels < FEWEST_LEVELS and not within_target:
+        return "not_evaluated", (
+            f"the levels scatter more than their replicates ({against}; {size}), and with {levels} levels a smooth "
+            f"misfit cannot be told from deviations of single levels; at least {FEWEST_LEVELS} "
+            "levels are needed"
+        )
     if not smooth:
         if lack is None:
             return "adequate", "no smooth misfit is seen; there are no replicates to compare it with"
@@ -52,9 +62,8 @@ def judge(record: dict, levels: int, replicates: bool, target: float | None, uni
             f"the levels scatter more than their replicates ({against}), but irregularly: "
             "a deviation of the levels, not a misfit of the function"
         )
-    size = f"largest mean deviation of a level {amount(record['misfit'], unit)}" if record["misfit"] is not None else ""
     why = listed(smooth) + (f" ({against})" if lack is not None else "") + (f"; {size}" if size else "")
-    if target is not None and record["misfit"] is not None and record["misfit"] <= target:
+    if within_target:
         return "adequate", f"a smooth misfit is seen but is smaller than the target of {amount(target, unit)}: {why}"
     return "inadequate", f"smooth misfit: {why}"
 
@@ -89,6 +98,10 @@ def lack_of_fit_words(lack: dict) -> str:
     -------
     str
     """
+    if lack["f"] is None:
+        return (
+            f"replicates agree exactly, so that there is no pure error on {lack['denominator_df']} degrees of freedom"
+        )
     return (
         f"lack of fit F = {figure(lack['f'], 5)} on {lack['numerator_df']} and {lack['denominator_df']} "
         f"degrees of freedom, {probability(lack['p'])}"

@@ -44,7 +44,7 @@ def candidate_reasons(
 
 
 def _lack(record: dict) -> str:
-    lack = record["lack_of_fit"]
+    lack = None if record["exact"] else record["lack_of_fit"]
     return f"; {lack_of_fit_words(lack)}" if lack is not None and lack["p"] < SIGNIFICANT else ""
 
 

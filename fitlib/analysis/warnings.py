@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from fitlib.analysis.choice import FLOOR_IN_EPSILON
 from fitlib.analysis.words import amount, counted, figure, listed
 
 #: Excursions beyond the neighbouring observations larger than this many residual standard deviations are told.
@@ -31,7 +30,7 @@ def collect_warnings(result: dict, study, dataset, observations) -> list[str]:
     warnings += _schemes(result)
     chosen = next((item for item in result["candidates"] if item["chosen"]), None)
     if chosen is not None:
-        warnings += _exact(result, chosen)
+        warnings += _exact(chosen)
         warnings += _suspects(result)
         warnings += _levels(result, chosen)
         warnings += _shape(result, chosen)
@@ -70,17 +69,10 @@ def _schemes(result: dict) -> list[str]:
     return lines
 
 
-def _exact(result: dict, chosen: dict) -> list[str]:
-    largest = max(abs(value) for value in _fitted_quantity(result))
-    if chosen["fitted_point_loss"] > (FLOOR_IN_EPSILON * 2.220446049250313e-16 * largest) ** 2:
+def _exact(chosen: dict) -> list[str]:
+    if not chosen["exact"]:
         return []
     return ["the chosen candidate passes through every observation to rounding: the data look computed, not measured"]
-
-
-def _fitted_quantity(result: dict) -> list[float]:
-    rows = result["observations"]
-    column = "stimulus" if result["settings"]["function"] == "analysis" else "response"
-    return [value for value, state in zip(rows[column], rows["state"], strict=True) if state == "used"]
 
 
 def _suspects(result: dict) -> list[str]:
@@ -109,7 +101,7 @@ def _levels(result: dict, chosen: dict) -> list[str]:
 
 def _shape(result: dict, chosen: dict) -> list[str]:
     beyond = chosen["excursion"]
-    if beyond["in_residual_sd"] is None or beyond["in_residual_sd"] <= LARGE_EXCURSION:
+    if chosen["exact"] or beyond["in_residual_sd"] is None or beyond["in_residual_sd"] <= LARGE_EXCURSION:
         return []
     place = amount(beyond["stimulus"], result["curves"]["abscissa"]["unit"])
     return [

@@ -9,6 +9,7 @@ import re
 import unicodedata
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from numbers import Real
 
 TYPES = ("text", "number", "whole_number", "boolean")
 
@@ -107,7 +108,7 @@ def cell(value: object, kind: str) -> str:
         return {True: "true", False: "false"}[_checked(value, bool)]
     if isinstance(value, bool):
         raise TypeError("a truth value")
-    number = float(value)
+    number = float(_checked(value, Real))
     if not math.isfinite(number):
         raise ValueError("not finite")
     if kind == "number":

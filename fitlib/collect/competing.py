@@ -64,7 +64,7 @@ COEFFICIENTS = (
     Column("half_span", "number", "abscissa", "Half span of the scaled variable (scaled basis)."),
     Column("fixed_points", "text", "", "Points the function passes through (scaled basis), as x : value."),
     Column("chosen", "boolean", "", "Whether the candidate is the issued function."),
-    Column("verdict", "text", "", "Verdict on the dataset: only an adequate function may be used."),
+    Column("verdict", "text", "", "Verdict on the issued function, which must be adequate; empty for the others."),
 )
 
 SCHEMES = (
@@ -188,7 +188,7 @@ def _coefficients(result: dict, item: dict) -> Iterator[dict]:
         "dataset": result["dataset"],
         "candidate": item["candidate"],
         "chosen": item["chosen"],
-        "verdict": result["selection"]["verdict"],
+        "verdict": result["selection"]["verdict"] if item["chosen"] else None,
     }
     for term in item["terms"]:
         yield {**same, "basis": "power", **term}

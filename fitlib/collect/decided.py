@@ -30,8 +30,13 @@ DATASETS = (
     Column("rejected", "whole_number", "1", "Rows that could not be used."),
     Column("levels", "whole_number", "1", "Levels used."),
     Column("series", "whole_number", "1", "Series used."),
-    Column("replicates", "boolean", "", "Whether a level has repeated observations in one series."),
-    Column("largest_supported_parameters", "whole_number", "1", "Most coefficients that the levels can support."),
+    Column("replicates", "boolean", "", "Whether a level has more than one observation, over all series."),
+    Column(
+        "largest_supported_parameters",
+        "whole_number",
+        "1",
+        "Most free coefficients that the levels leave room for.",
+    ),
     Column("candidates", "whole_number", "1", "Candidates declared."),
     Column("candidates_fitted", "whole_number", "1", "Candidates that could be fitted."),
     Column("weighting", "text", "", "Weights of the observations."),
@@ -132,7 +137,8 @@ def _dataset(result: dict) -> dict:
     settings, design, selected = result["settings"], result["design"], result["settings"]["target"] or {}
     row = {"dataset": result["dataset"], "file_name": result["file_name"]}
     row["function_file"] = function_path(result) if result["function"] is not None else None
-    row |= {name: settings[name] for name in ("function", "evaluation", "weighting", "rule", "alpha")}
+    row |= {name: settings[name] for name in ("function", "evaluation", "weighting", "rule")}
+    row["alpha"] = settings["alpha"] if settings["rule"] == "f_test" else None
     for role in ("stimulus", "response", "fitted", "evaluated"):
         row |= {f"{role}_{part}": settings[role][part] for part in ("quantity", "unit")}
     row["interval_lower"], row["interval_upper"] = settings["measuring_interval"]

@@ -74,9 +74,9 @@ def lack_of_fit(residual: np.ndarray, root_weights: np.ndarray, level_index: np.
         return None
     lack = float(np.sum(weights * means**2))
     pure = float(np.sum((root_weights * (residual - means[level_index])) ** 2))
-    if not pure > 0:
-        return None
-    f = lack / (levels - parameters) / (pure / (n - levels))
+    mean_square = lack / (levels - parameters)
+    # Replicates that agree exactly (coarse resolution) leave no pure error: any lack of fit is then infinite against it
+    f = mean_square / (pure / (n - levels)) if pure > 0 else (np.inf if lack > 0 else 0.0)
     p = float(stats.f.sf(f, levels - parameters, n - levels))
     return LackOfFit(f, p, levels - parameters, n - levels, lack, pure)
 
@@ -141,9 +141,11 @@ def variance_components(
     spare = weights.size - design.shape[1]
     if pure_df and spare > 0:
         means, _ = level_residuals(residual, root_weights, level_index)
-        # E[sum W m^2] = level_variance * tr(M W) + pure_variance * (L - p), with M = I - basis basis^T
+        # E[sum W m^2] = level_variance * tr(M N) + pure_variance * (L - p), with M = I - basis basis^T and N the
+        # numbers of observations: at weight 1 a level's deviation is common to its observations
         excess = np.sum(weights * means**2) - pure_variance * spare
-        level_variance = max(0.0, excess / np.sum((1 - np.sum(basis**2, axis=1)) * weights))
+        counts = np.bincount(level_index)
+        level_variance = max(0.0, excess / np.sum((1 - np.sum(basis**2, axis=1)) * counts))
     return Components(*(float(np.sqrt(v)) for v in (repeat_variance, series_variance, pure_variance, level_variance)))
 
 

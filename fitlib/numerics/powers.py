@@ -54,10 +54,11 @@ def power_form(curve: PolynomialCurve, covariance: np.ndarray, lower: float, upp
     transform = np.array([[_to_double(value) for value in column] for column in columns]).T
     # The law of propagation of uncertainty (JCGM 100:2008, eq. 13) for a linear change of basis. The square root of
     # the covariance is transformed, not the covariance, so that cancellation costs half as many digits.
-    spread = transform @ _root(covariance)
+    with np.errstate(over="ignore", invalid="ignore"):  # powers of an extreme unit may leave the range of doubles
+        uncertainties = np.sqrt(np.sum((transform @ _root(covariance)) ** 2, axis=1))
     return PowerForm(
         coefficients=np.array(rounded),
-        standard_uncertainties=np.sqrt(np.sum(spread**2, axis=1)),
+        standard_uncertainties=uncertainties,
         largest_shift=_largest_shift(exact, rounded, lower, upper),
     )
 

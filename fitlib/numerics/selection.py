@@ -126,7 +126,8 @@ def _values(evidence: Evidence, rule: str) -> np.ndarray:
     if rule == "f_test":
         return np.asarray(evidence.level_squares, dtype=float)
     root = np.sqrt(evidence.level_weights / evidence.level_weights.mean())
-    scaled = evidence.level_squares / evidence.level_weights.mean()
+    least = evidence.floor * evidence.level_weights.sum()
+    scaled = np.maximum(evidence.level_squares, least) / evidence.level_weights.mean()
     pairs = zip(scaled, evidence.parameters, strict=True)
     criteria = [information_criteria(square, root, int(p)) if np.isfinite(square) else None for square, p in pairs]
     return np.array([np.nan if item is None else getattr(item, rule) for item in criteria])
@@ -152,7 +153,7 @@ def _threshold(evidence: Evidence, values: np.ndarray, open_to: np.ndarray) -> f
     """Smallest loss plus one standard error of that loss (Breiman et al. 1984, sec. 3.4.3)."""
     best = int(np.flatnonzero(open_to)[np.argmin(values[open_to])])
     error = standard_error(evidence.level_losses[best : best + 1], evidence.level_weights)[0]
-    return float(values[best] + (error if np.isfinite(error) else 0.0))
+    return max(float(values[best] + (error if np.isfinite(error) else 0.0)), evidence.floor)
 
 
 def _simplest(evidence: Evidence, values: np.ndarray, open_to: np.ndarray, limit: float) -> int | None:

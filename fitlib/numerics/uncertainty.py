@@ -41,7 +41,7 @@ def coefficient_covariance(
         ``(A^T A)^-1``.
     level_index : ndarray of shape (n,), int
     reading_variance, level_variance : float
-        At weight 1.
+        At weight 1; both grow with the spread that the weighting declares.
 
     Returns
     -------
@@ -50,8 +50,7 @@ def coefficient_covariance(
     covariance = reading_variance * inverse_normal
     if level_variance > 0:
         weighted = design * root_weights[:, None]
-        # A level's deviation is the same for its observations whatever their weight
-        sums = np.stack([np.bincount(level_index, root_weights * column) for column in weighted.T], axis=1)
+        sums = np.stack([np.bincount(level_index, column) for column in weighted.T], axis=1)
         part = inverse_normal @ sums.T
         covariance = covariance + level_variance * part @ part.T
     return covariance

@@ -18,7 +18,6 @@ from fitlib.observations.levels import (
 )
 from fitlib.observations.wording import listed, number, plural
 
-LEAST_LEVELS = 2
 Blame = Callable[[str, str], None]
 
 
@@ -65,13 +64,8 @@ def series_numbers(words: Sequence[str]) -> np.ndarray:
     return np.array([numbers[word] for word in words], dtype=int)
 
 
-def below(closest: float) -> float:
-    """A short level tolerance below the smallest gap, with which each value is a level of its own."""
-    return float(f"{closest / 3:.0e}")
-
-
 def _ways_out(found: Clusters) -> str:
-    apart = f"`level_tolerance: {below(found.closest):g}` if each value is meant as a level of its own"
+    apart = "`level_tolerance: 0` if each value is meant as a level of its own"
     if found.tolerance is None:
         return f"no single tolerance keeps them apart: name a `level` column, or give {apart}"
     return f"give `level_tolerance: {found.tolerance:g}` (or a `level` column), or {apart}"
@@ -182,10 +176,10 @@ def group_used(rows: Rows, dataset, settled: bool, blame: Blame) -> Grouped:
             blame("level_tolerance", advice(found))
     elif tolerance > 0 and not levels.faults:
         notes += _still_clustered(rows, levels)
-    if settled and levels.values.size < LEAST_LEVELS:
+    if settled and levels.values.size == 1:
         where = f"{plural(used.size, 'used row')} at {number(levels.values[0])}"
-        blame("", f"only one level is used ({where}); at least two are needed")
-    elif settled:
+        notes.append(f"only one level is used ({where}): no function can be fitted")
+    if settled:
         _check_interval(dataset.measuring_interval, levels, blame)
     index = np.full(rows.stimulus.size, -1)
     index[used] = levels.index

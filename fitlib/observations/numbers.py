@@ -15,6 +15,8 @@ _PLAIN = {
 _THOUSANDS = re.compile(r"[+-]?\d{1,3}(?:([\s.,'’_])\d{3})(?:\1\d{3})*(?:[.,]\d+)?")
 _LEADING_NUMBER = re.compile(r"[+-]?(?:\d+[.,]?\d*|[.,]\d+)(?:[eE][+-]?\d+)?\s*(?=\D)")
 _MISSING = {"", "na", "n/a", "#n/a", "n.a.", "nan", "null", "none", "missing", "-", "--", "?"}
+#: Sizes with which every statistic stays within double precision; another unit brings any quantity into them.
+SMALLEST, LARGEST = 1e-60, 1e60
 _INFINITE = {"inf", "infinity", "∞"}
 
 
@@ -33,6 +35,8 @@ def read_number(text: str, decimal: str) -> float | None:
     value = float(text.replace(",", ".")) if decimal == "comma" else float(text)
     if not math.isfinite(value) or (value == 0.0 and _has_nonzero_digit(text)):
         return None  # written beyond the range of double precision
+    if value != 0.0 and not SMALLEST <= abs(value) <= LARGEST:
+        return None  # squares of squares would leave the range
     return value
 
 
@@ -49,7 +53,7 @@ def explain(text: str, decimal: str) -> tuple[str, str]:
     if text.lstrip("+-").lower() in _INFINITE:
         return "infinite value", f"{shown} is infinite; a finite number is expected"
     if _PLAIN[decimal].fullmatch(text):
-        return "range of numbers", f"{shown} is beyond the range of numbers (about 1e-308 to 1e308)"
+        return "range of numbers", f"{shown} is beyond the sizes fitlib computes with (1e-60 to 1e60, and 0); choose another unit"
     return _explain_writing(shown, text, decimal)
 
 

@@ -2,7 +2,7 @@
 
 from fitlib.revision.compare import compare_revisions
 from fitlib.revision.comparison import Comparison
-from fitlib.revision.publish import Published, next_revision, publish
+from fitlib.revision.publishing import Published, next_revision, publish
 from fitlib.revision.read import Revision, latest_revision, read_revision
 from fitlib.revision.same import same_results
 from fitlib.revision.verify import Difference, verify_revision

@@ -63,10 +63,10 @@ def _fact_changes(before: Mapping, after: Mapping) -> Iterator[FactChange]:
 
 
 def _other_facts(revision: Revision) -> dict[str, object]:
-    """Facts that no other part of the comparison tells, one level deep: ``code.numerics``."""
+    """Facts that no other part of the comparison tells, one level deep: ``code.numerics``; no digests of facts."""
     flat: dict[str, object] = {}
     for name, value in revision.manifest.items():
-        if name in FACTS_APART:
+        if name in FACTS_APART or name.endswith("_digest"):
             continue
         flat |= {f"{name}.{key}": item for key, item in value.items()} if isinstance(value, dict) else {name: value}
     return flat
@@ -81,17 +81,18 @@ def _choices(revision: Revision) -> dict[str, Choice]:
 def _choice(row: Mapping[str, str], facts: Mapping[str, str], function: Mapping) -> Choice:
     lower, upper = _number(facts.get("interval_lower")), _number(facts.get("interval_upper"))
     return Choice(
-        row["candidate"],
-        row["runner_up"],
-        row["verdict"],
-        row["choice"],
+        row.get("candidate", ""),
+        row.get("runner_up", ""),
+        row.get("verdict", ""),
+        row.get("choice", ""),
         facts.get("loss_scheme", ""),
-        _number(row["loss"]),
+        _number(row.get("loss")),
         None if lower is None or upper is None else (lower, upper),
         function.get("reading_standard_deviation"),
         function.get("level_standard_deviation"),
         facts.get("fitted_unit", ""),
         facts.get("stimulus_unit", ""),
+        ", ".join(filter(None, (facts.get("function"), facts.get("evaluation")))),
     )
 
 
@@ -122,7 +123,7 @@ def _shift(before: dict | None, after: dict | None) -> Shift | None:
 
 
 def _same_choice(before: Choice, after: Choice) -> bool:
-    words = ("candidate", "verdict", "choice", "scheme", "interval", "unit", "stimulus_unit")
+    words = ("candidate", "verdict", "choice", "scheme", "interval", "unit", "stimulus_unit", "use")
     numbers = ("loss", "reading_standard_deviation", "level_standard_deviation")
     return all(getattr(before, name) == getattr(after, name) for name in words) and all(
         same_number(getattr(before, name), getattr(after, name)) for name in numbers

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import asdict, dataclass
 
 from fitlib.revision.curves import Shift
@@ -13,6 +13,7 @@ from fitlib.revision.names import printable
 from fitlib.revision.settings import SettingChange
 
 _LONGEST_VALUE = 300
+_LONGEST_LIST = 10
 _RTOL = 1e-8
 _DEVIATIONS = {"repeatability": "reading_standard_deviation", "level deviation": "level_standard_deviation"}
 
@@ -44,6 +45,8 @@ class Choice:
         Of the issued function, in the unit of the fitted quantity.
     unit, stimulus_unit : str
         Of the fitted quantity and of the stimulus.
+    use : str
+        ``calibration, inverse`` and the like.
     """
 
     candidate: str
@@ -57,6 +60,7 @@ class Choice:
     level_standard_deviation: float | None
     unit: str
     stimulus_unit: str
+    use: str
 
 
 @dataclass(frozen=True)
@@ -107,9 +111,9 @@ class Comparison:
     def causes(self) -> list[str]:
         """One sentence for each difference in program, data and settings."""
         lines = [_version_line(change) for change in self.versions]
-        lines += [f"The program's own facts differ: {_text(change.name)}." for change in self.facts]
+        lines += [_fact_line(change) for change in self.facts]
         lines += [_data_line(change) for change in self.data]
-        lines += [_setting_line(change) for change in self.settings]
+        lines += _setting_lines(self.settings)
         if self.study_text and not self.settings:
             lines.append("The study's text changed, its settings did not.")
         return lines
@@ -143,6 +147,13 @@ def _value(value: object) -> str:
     return text if len(text) <= _LONGEST_VALUE else text[:_LONGEST_VALUE] + "..."
 
 
+def _fact_line(change: FactChange) -> str:
+    part = _text(change.name)
+    if part.startswith("code."):
+        return f"The program's code changed: {part.removeprefix('code.')}."
+    return f"Of the facts in the manifest, {part} changed."
+
+
 def _version_line(change: FactChange) -> str:
     name = "fitlib" if change.name == "fitlib" else f"Version of {_text(change.name)}"
     return f"{name} changed from {_version(change.before)} to {_version(change.after)}."
@@ -173,11 +184,32 @@ def _counted(rows: int) -> str:
     return "1 row" if rows == 1 else f"{rows} rows"
 
 
-def _setting_line(change: SettingChange) -> str:
-    key = _text(change.key)
+def _setting_lines(changes: Iterable[SettingChange]) -> list[str]:
+    """One line for each change; the same change of many datasets is one."""
+    groups: dict[tuple[str, str], list[SettingChange]] = {}
+    for change in changes:
+        key = change.key if change.is_dataset else change.general_key
+        groups.setdefault((key, _setting_text(change)), []).append(change)
+    return [_setting_line(text, group) for (_, text), group in groups.items()]
+
+
+def _setting_line(text: str, group: list[SettingChange]) -> str:
+    first = group[0]
+    if first.is_dataset:
+        return (
+            f"Dataset {_text(first.dataset)} was {'added to' if first.kind == 'added' else 'taken out of'} the study."
+        )
+    if len(group) == 1:
+        return f"Setting {_text(first.key)} {text}."
+    names = ", ".join(_text(change.dataset) for change in group[:_LONGEST_LIST])
+    more = ", ..." if len(group) > _LONGEST_LIST else ""
+    return f"Setting {_text(first.general_key)} {text} ({len(group)} datasets: {names}{more})."
+
+
+def _setting_text(change: SettingChange) -> str:
     if change.kind == "changed":
-        return f"Setting {key} changed from {_value(change.before)} to {_value(change.after)}."
-    return f"Setting {key} was {change.kind}: {_value(change.after if change.kind == 'added' else change.before)}."
+        return f"changed from {_value(change.before)} to {_value(change.after)}"
+    return f"was {change.kind}: {_value(change.after if change.kind == 'added' else change.before)}"
 
 
 def _dataset_line(change: DatasetChange) -> str:
@@ -202,6 +234,8 @@ def _differences(change: DatasetChange) -> Iterator[str]:
     yield _pair("verdict", _text(old.verdict), _text(new.verdict))
     if old.choice != new.choice:
         yield _pair("choice", _text(old.choice) or "none", _text(new.choice) or "none")
+    if old.use != new.use:
+        yield _pair("use", _text(old.use), _text(new.use))
     yield from _loss_difference(old, new)
     if old.interval != new.interval:
         yield f"measuring interval from {_interval(old)} to {_interval(new)}"

@@ -13,7 +13,7 @@ if TYPE_CHECKING:
 
 # What fitlib.collect guards with an apostrophe (it lies beside this package, not below; a test compares the two).
 _GUARDED = re.compile("'+[=+\\-@\uff1d\uff0b\uff0d\uff20]")
-_TYPES = {"number": "float64", "whole_number": "Int64", "boolean": "boolean", "text": "str"}
+_TYPES = {"whole_number": "Int64", "boolean": "boolean", "text": "str"}
 
 
 def rows_of(data: bytes, types: Mapping[str, str]) -> Iterator[dict[str, str]]:
@@ -59,14 +59,19 @@ def frame_of(data: bytes, types: Mapping[str, str]) -> pandas.DataFrame:
     """
     import pandas
 
+    numbers = [name for name, kind in types.items() if kind == "number"]
     text = [name for name, kind in types.items() if kind == "text"]
     frame = pandas.read_csv(
         io.BytesIO(data),
-        dtype={name: _TYPES.get(kind, "str") for name, kind in types.items()},
+        dtype={name: _TYPES.get(kind, "str") for name, kind in types.items() if name not in numbers},
+        converters=dict.fromkeys(numbers, _number),  # exact in every version of pandas
         keep_default_na=False,  # a label may be "NA"
-        na_values={name: [""] for name in types if name not in text},
-        float_precision="round_trip",
+        na_values={name: [""] for name in types if name not in [*text, *numbers]},
     )
     for name in text:
         frame[name] = frame[name].map(unguarded)
-    return frame
+    return frame.astype(dict.fromkeys(numbers, "float64"))
+
+
+def _number(cell: str) -> float:
+    return float(cell) if cell else float("nan")

@@ -23,8 +23,8 @@ HISTORY_FILES = frozenset({"CHANGES.md", "changes.json", "report.html"})
 #: Names that a publisher may not hand in.
 RESERVED_FILES = frozenset({MANIFEST, RUN, SEAL, "CHANGES.md"})
 _RESERVED_KEYS = frozenset({"format", "study", "inputs", "outputs", "history"})
-#: Entries that a comparison tells of in another way, or that follow from the others.
-FACTS_APART = _RESERVED_KEYS | {"content_digest", "plan_digest", "seed", "random_seed", "versions"}
+#: Entries that a comparison tells of in another way.
+FACTS_APART = _RESERVED_KEYS | {"seed", "versions"}
 _SECTIONS = ("inputs", "outputs")
 _DIGEST = re.compile(r"[0-9a-f]{64}")
 _SEAL = re.compile(rb"([0-9a-f]{64})  manifest\.json\n([0-9a-f]{64})  run\.json\n")

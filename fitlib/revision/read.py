@@ -43,7 +43,11 @@ class Revision:
     @cached_property
     def files(self) -> tuple[str, ...]:
         """Relative paths of all files that the manifest lists."""
-        return tuple(sorted(listed_files(self.manifest)))
+        return tuple(sorted(self._listed))
+
+    @cached_property
+    def _listed(self) -> dict[str, dict]:
+        return listed_files(self.manifest)
 
     @property
     def inputs(self) -> dict[str, str]:
@@ -68,7 +72,7 @@ class Revision:
             If the revision has no such file, or it is not what was published.
         """
         place = f"{self.path}/{printable(path)}"
-        record = listed_files(self.manifest).get(path)
+        record = self._listed.get(path)
         if record is None:
             raise VerificationError(f"{place}: not part of the revision")
         try:

@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 _ABSENT = object()
+# What follows from other settings of the same item.
+_DERIVED = re.compile(r"families\[.*\]\.candidates", re.DOTALL)
 
 
 @dataclass(frozen=True)
@@ -19,12 +22,25 @@ class SettingChange:
     kind : {"added", "removed", "changed"}
     before, after : object
         JSON-able; None on the side where the setting is absent.
+    dataset : str
+        Id of the dataset that the setting belongs to; empty for any other.
     """
 
     key: str
     kind: str
     before: object
     after: object
+    dataset: str = ""
+
+    @property
+    def is_dataset(self) -> bool:
+        """Whether a whole dataset was added to the study or taken out."""
+        return self.key == f"datasets[{self.dataset}]" and self.kind != "changed"
+
+    @property
+    def general_key(self) -> str:
+        """The key without the id of the dataset: ``datasets[*].measuring_interval``."""
+        return f"datasets[*]{self.key.removeprefix(f'datasets[{self.dataset}]')}" if self.dataset else self.key
 
 
 def settings_changes(before: Mapping, after: Mapping) -> tuple[SettingChange, ...]:
@@ -39,7 +55,8 @@ def settings_changes(before: Mapping, after: Mapping) -> tuple[SettingChange, ..
     -------
     tuple of SettingChange
     """
-    return tuple(_in_mapping("", before, after))
+    changes = _in_mapping("", before, after)
+    return tuple(change for change in changes if not _DERIVED.fullmatch(change.key))
 
 
 def _in_mapping(prefix: str, before: Mapping, after: Mapping) -> Iterator[SettingChange]:
@@ -72,7 +89,8 @@ def _in_list(key: str, before: list, after: list) -> Iterator[SettingChange]:
         yield from _in_plain_list(key, before, after)
         return
     for name in sorted({*old, *new}):
-        yield from _at(f"{key}[{name}]", old.get(name, _ABSENT), new.get(name, _ABSENT))
+        changes = _at(f"{key}[{name}]", old.get(name, _ABSENT), new.get(name, _ABSENT))
+        yield from (replace(change, dataset=name) for change in changes) if key == "datasets" else changes
     common = [name for name in old if name in new], [name for name in new if name in old]
     if common[0] != common[1]:
         yield SettingChange(f"order of {key}", "changed", *common)

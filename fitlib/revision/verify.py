@@ -7,8 +7,8 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
-from fitlib.errors import InputError, Problem, VerificationError
-from fitlib.revision.disk import digest_of, read_regular, walk
+from fitlib.errors import FitlibError, InputError, Problem, VerificationError
+from fitlib.revision.disk import digest_of, read_regular, sha256, walk
 from fitlib.revision.manifest import MANIFEST, RUN, SEAL, listed_files, load_manifest, read_seal
 from fitlib.revision.names import printable
 
@@ -53,11 +53,16 @@ def verify_revision(path: str | Path) -> list[Difference]:
     ------
     InputError
         If there is no such folder.
+    FitlibError
+        If a folder in it cannot be read.
     """
     folder = Path(path)
     if not folder.is_dir():
         raise InputError([Problem(str(path), "no such folder; the folder of a revision is wanted")])
-    found = dict(walk(folder))
+    try:
+        found = dict(walk(folder))
+    except OSError as error:
+        raise FitlibError(f"{printable(str(error.filename))}: cannot be read: {error.strerror or error}") from error
     try:
         manifest = load_manifest(folder)
     except VerificationError as error:
@@ -74,8 +79,12 @@ def _sealed(folder: Path, found: dict[str, os.DirEntry]) -> dict[str, str | None
     unknown = {SEAL: None, MANIFEST: None, RUN: None}
     if SEAL not in found or not found[SEAL].is_file(follow_symlinks=False):
         return unknown
-    digests = read_seal(read_regular(folder / SEAL))
-    return unknown if digests is None else {SEAL: digest_of(folder / SEAL)[0], **digests}
+    try:
+        data = read_regular(folder / SEAL)
+    except OSError:
+        return unknown
+    digests = read_seal(data)
+    return unknown if digests is None else {SEAL: sha256(data), **digests}
 
 
 def _missing(listed: dict, found: dict) -> Iterator[Difference]:
@@ -95,7 +104,8 @@ def _present(listed: dict, found: dict[str, os.DirEntry]) -> Iterator[Difference
             elif path not in folders:
                 yield Difference("extra", path, "extra: a folder that is not part of the revision")
         elif not item.is_file(follow_symlinks=False):
-            yield Difference("extra", path, "extra: neither a file nor a folder")
+            kind = "altered" if path in listed else "extra"
+            yield Difference(kind, path, f"{kind}: neither a file nor a folder")
         elif path not in listed:
             yield Difference("extra", path, "extra: not part of the revision")
         else:

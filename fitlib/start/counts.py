@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fitlib.observations.clusters import Clusters, find_clusters
-from fitlib.observations.grouping import below, series_numbers
+from fitlib.observations.grouping import series_numbers
 from fitlib.observations.levels import Levels, group_by_label, group_by_tolerance, group_exactly
 
 
@@ -48,7 +48,7 @@ def _grouped(stimulus: np.ndarray, label: np.ndarray | None, series: np.ndarray)
     clusters = find_clusters(stimulus, series)
     if clusters is None:
         return group_exactly(stimulus), None, None
-    tolerance = clusters.tolerance if clusters.tolerance is not None else below(clusters.closest)
+    tolerance = clusters.tolerance if clusters.tolerance is not None else 0.0
     return group_by_tolerance(stimulus, tolerance), tolerance, clusters
 
 

@@ -57,6 +57,17 @@ def positive(below: float | None = None) -> Any:
     return Annotated[float, Field(gt=0, lt=below), BeforeValidator(check)]
 
 
+def not_negative() -> Any:
+    """Return the kind "0 or a number above 0"."""
+
+    def check(value: Any) -> float:
+        if not is_number(value) or value < 0:
+            raise not_allowed(value, "0 or a number above 0")
+        return float(value)
+
+    return Annotated[float, Field(ge=0), BeforeValidator(check)]
+
+
 def choice(*words: str, later: tuple[str, ...] = ()) -> Any:
     """Return the kind "one of these words"; `later` are words of the vocabulary that this version cannot do yet."""
     allowed = words[0] if len(words) == 1 else f"{', '.join(words[:-1])} or {words[-1]}"

@@ -23,6 +23,7 @@ from fitlib.study.kinds import (
     line_text,
     not_allowed,
     paragraph,
+    not_negative,
     positive,
     whole,
 )
@@ -82,7 +83,7 @@ class DatasetKeys(Model):
     measuring_interval: Interval | None = None
     evaluation: choice("inverse", "direct") = "inverse"
     function: choice("calibration", "analysis") = "calibration"
-    level_tolerance: positive() | None = None
+    level_tolerance: not_negative() | None = None
     record: Annotated[dict[Word, Line], Field(min_length=1)] | None = None
     exclusions: Annotated[list[ExclusionEntry], Field(min_length=1)] | None = None
     verification_points: VerificationGroup | None = None

@@ -90,10 +90,9 @@ def test_a_measuring_interval_beyond_the_levels_used_is_an_error_that_names_both
     assert "[0, 3] reaches beyond the levels used, [0, 2]" in found.message
 
 
-def test_one_level_is_too_few(problems):
-    (found,) = problems({"a.csv": "x,y\n1,1\n1,2\n"})
-    assert found.message == 'dataset "A-1": only one level is used (2 used rows at 1); at least two are needed'
-    assert found.key == "datasets[0]"
+def test_one_level_is_told_and_does_not_stop_the_study(read):
+    observations = read({"a.csv": "x,y\n1,1\n1,2\n"})
+    assert observations.notes == ("only one level is used (2 used rows at 1): no function can be fitted",)
 
 
 def test_no_used_row_is_an_error(problems):

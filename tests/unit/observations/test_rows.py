@@ -36,7 +36,7 @@ EXPECTED = {
     7: '"12.5 mA" is a number with text behind it',
     8: '"1,234.5" has a thousands sign',
     9: "if it is the decimal mark, declare `decimal: comma`",
-    10: "beyond the range of numbers",
+    10: "beyond the sizes fitlib computes with",
     11: "typographic minus sign",
     12: "3 fields where the header has 4",
     13: "5 fields where the header has 4",

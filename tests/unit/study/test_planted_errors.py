@@ -111,4 +111,4 @@ def test_a_value_that_is_not_given_is_reported_once(bench, valid):
 def test_a_faulty_default_is_reported_once_and_not_for_every_dataset(bench, full):
     line, key, message = bench.only(full, ("level_tolerance: 0.02", "level_tolerance: -0.02"))
     assert (line, key) == (14, "dataset_defaults.level_tolerance")
-    assert message == "-0.02 is not allowed; a number above 0"
+    assert message == "-0.02 is not allowed; 0 or a number above 0"

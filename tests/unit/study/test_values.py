@@ -91,9 +91,9 @@ def test_a_short_study_gets_the_defaults(bench):
         ("columns:", "measuring_interval: [1]\n    columns:", "datasets[0].measuring_interval", "two numbers"),
         (
             "columns:",
-            "level_tolerance: 0\n    columns:",
+            "level_tolerance: -1\n    columns:",
             "datasets[0].level_tolerance",
-            "0 is not allowed; a number above 0",
+            "-1 is not allowed; 0 or a number above 0",
         ),
         (
             "columns:",

@@ -1,4 +1,4 @@
-"""Publishing a revision: written beside its final place, brought to the disk, renamed in one step, never changed again."""
+"""Publishing a revision: written beside its final place, renamed in one step, never changed again."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ from pathlib import Path
 from fitlib.errors import FitlibError
 from fitlib.revision.changes import History, changes_text
 from fitlib.revision.compare import compare_revisions
-from fitlib.revision.disk import copy_new, dump_json, sha256, sync_folder, sync_folders, write_new
+from fitlib.revision.disk import copy_new, digest_of, dump_json, sha256, sync_folder, sync_folders, write_new
 from fitlib.revision.ledger import numbers_in, read_ledger, write_ledger
 from fitlib.revision.manifest import (
     HISTORY_FILES,
@@ -87,7 +87,8 @@ def publish(
         ``study.yaml`` and data files by path relative to the study; they are copied byte for byte to ``inputs/``.
     facts : mapping
         JSON-able facts that follow from the inputs: ``plan_digest``, ``seed``, ``versions`` (by name, ``fitlib`` and
-        libraries), ``code`` (digests of the program's code by part), and any other.
+        libraries), ``code`` (digests of the program's code by part), and any other. What depends on the versions of
+        libraries must stand in ``versions`` or ``plan_digest`` only.
     run_facts : mapping
         JSON-able facts of this run, for ``run.json``: who, when, where, durations, git commit.
     render : callable, optional
@@ -123,7 +124,7 @@ def publish(
             return staged.publish(inputs, input_digests or {}, facts, run_facts, latest)
         except OSError as error:
             reason = error.strerror or error
-            raise FitlibError(f"{folder}: no revision was published: {reason}; nothing was changed") from error
+            raise FitlibError(f"{folder}: no revision was published: {reason}; nothing was left behind") from error
 
 
 def next_revision(results_dir: str | Path, study_name: str) -> str:
@@ -201,12 +202,17 @@ class _Staged:
         self.path.mkdir()
         try:
             manifest = self._write_results(inputs, digests, facts)
-            if isinstance(latest, Revision) and _only_libraries_differ(latest, manifest):
-                if same_results(latest.path, self.files):
-                    return _standing(latest, "holds the same results, though versions of libraries differ")
+            if self._only_libraries_differ(latest, manifest) and same_results(latest.path, self.files):
+                return _standing(latest, _why_the_same(latest, manifest))
             return self._finish(manifest, run_facts, latest)
         finally:
             shutil.rmtree(self.path, ignore_errors=True)  # after the rename there is none
+
+    def _only_libraries_differ(self, latest: Revision | str | None, manifest: Mapping) -> bool:
+        """Whether only versions of libraries are new; without digests of the code nobody knows."""
+        if not isinstance(latest, Revision) or not manifest.get("code"):
+            return False
+        return _of_inputs_and_program(latest.manifest) == _of_inputs_and_program(manifest)
 
     def _write_results(self, inputs, digests: Mapping[str, str], facts: Mapping) -> dict:
         entries = {path: self._write_input(path, source, digests.get(path)) for path, source in inputs.items()}
@@ -221,10 +227,18 @@ class _Staged:
             write_new(self.path, place, source)
             record = entry(source)
         else:
-            record = copy_new(source, self.path, place)
+            record = self._copy_input(path, source)
         if expected is not None and record["sha256"] != expected:
             raise FitlibError(f"{printable(path)}: changed while the study ran; nothing was published; run again")
         return record
+
+    def _copy_input(self, path: str, source: Path) -> dict:
+        try:
+            source.open("rb").close()
+        except OSError as error:
+            message = f"{printable(path)}: cannot be read: {error.strerror or error}; nothing was published"
+            raise FitlibError(message) from error
+        return copy_new(source, self.path, f"inputs/{path}")
 
     def _finish(self, manifest: dict, run_facts: Mapping, latest: Revision | str | None) -> Published:
         folder = self.path.parent
@@ -271,16 +285,19 @@ class _Staged:
         return text
 
 
-def _only_libraries_differ(latest: Revision, manifest: Mapping) -> bool:
-    """Whether inputs, program and all facts but versions of libraries are the same."""
+def _why_the_same(latest: Revision, manifest: Mapping) -> str:
+    other = latest.manifest.get("versions") != manifest.get("versions")
+    return "holds the same results" + (", though versions of libraries differ" if other else "")
+
+
+def _of_inputs_and_program(manifest: Mapping) -> dict:
+    """What must be the same when only libraries differ."""
     apart = ("versions", "plan_digest", "content_digest", "outputs", "history")
-    old = {name: value for name, value in latest.manifest.items() if name not in apart}
-    new = {name: value for name, value in manifest.items() if name not in apart}
-    programs = [dict(item.get("versions") or {}).get("fitlib") for item in (latest.manifest, manifest)]
-    return old == new and bool(manifest.get("code")) and programs[0] == programs[1]
+    rest = {name: value for name, value in manifest.items() if name not in apart}
+    return rest | {"fitlib": (manifest.get("versions") or {}).get("fitlib")}
 
 
 def _previous(latest: Revision | str | None) -> dict | None:
     if not isinstance(latest, Revision):
         return None
-    return {"revision": latest.path.name, "manifest_sha256": sha256(dump_json(latest.manifest).encode())}
+    return {"revision": latest.path.name, "manifest_sha256": digest_of(latest.path / MANIFEST)[0]}
