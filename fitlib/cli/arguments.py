@@ -50,7 +50,7 @@ def add_command(commands, name: str, execute, summary: str, details: str, exampl
     parser = commands.add_parser(
         name,
         help=summary,
-        description=f"{details}",
+        description=details,
         epilog=f"example:\n{example}",
         formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
@@ -76,9 +76,9 @@ def require_file(path: str, what: str) -> None:
     """
     mode = _mode(path, what)
     if stat.S_ISDIR(mode):
-        raise _bad_path(path, f"is a folder; {what} is a file")
+        raise _bad_path(path, f"is a folder; expected {what}")
     if not (stat.S_ISREG(mode) or stat.S_ISFIFO(mode)):
-        raise _bad_path(path, f"is not a file; {what} is a file")
+        raise _bad_path(path, f"is not a file; expected {what}")
     if not os.access(path, os.R_OK):
         raise _bad_path(path, "cannot be read: permission denied")
 
@@ -99,7 +99,7 @@ def require_folder(path: str, what: str) -> None:
         The path is missing, not a folder, or not readable.
     """
     if not stat.S_ISDIR(_mode(path, what)):
-        raise _bad_path(path, f"is not a folder; {what} is a folder")
+        raise _bad_path(path, f"is not a folder; expected {what}")
     if not os.access(path, os.R_OK | os.X_OK):
         raise _bad_path(path, "cannot be read: permission denied")
 

@@ -93,7 +93,5 @@ def check(study_file: str) -> CheckSummary:
     if any(problem.severity == "error" for problem in problems):
         raise InputError(problems)
     datasets = tuple(_summarize(each.id, record) for each, record in zip(study.datasets, observations, strict=True))
-    warnings = [*study.warnings, *problems]
-    known = {problem.message for problem in warnings}
-    notes = [note for note in _notes(study, study.datasets, observations) if note.message not in known]
-    return CheckSummary(study, datasets, tuple([*warnings, *notes]))
+    warnings = (*study.warnings, *problems, *_notes(study, study.datasets, observations))
+    return CheckSummary(study, datasets, warnings)

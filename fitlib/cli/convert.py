@@ -81,13 +81,11 @@ def _refuse_without_effect(arguments) -> None:
 
 def _tell_cautions(function) -> None:
     """Once with each conversion, where the person who uses the value reads them."""
-    lower, upper = function.measuring_interval
-    stimulus = function.record["stimulus"]
-    tell(f"{function.dataset}: {stimulus['quantity']} from {lower!r} to {upper!r} {stimulus['unit']}")
+    tell(f"{function.dataset}: {function.record['candidate']}, verdict {function.record['verdict']}")
     for caution in function.cautions:
         tell(f"caution: {caution}")
     if function.tie:
-        tell(f"caution: the choice is a tie; the simplest candidate was issued, {function.record['candidate']}")
+        tell("caution: the choice is a tie; the simplest of the candidates that could not be told apart was issued")
 
 
 def _choice(function) -> str:

@@ -42,9 +42,16 @@ class _ShowVersion(argparse.Action):
         parser.exit()
 
 
+class _Parser(argparse.ArgumentParser):
+    """A parser that does not hide that its help could not be written."""
+
+    def print_help(self, file=None):
+        print(self.format_help(), end="", file=file or sys.stdout)
+
+
 def build_parser() -> argparse.ArgumentParser:
     """Return the parser of the whole command line."""
-    parser = argparse.ArgumentParser(
+    parser = _Parser(
         prog="fitlib",
         description="Choose, defend and hand over calibration functions fitted to reference and reading.",
         epilog=EXAMPLES,
@@ -74,10 +81,18 @@ def _engine_command(argv: list[str]) -> int | None:
 def _execute(argv: list[str]) -> int:
     status = _engine_command(argv)
     if status is None:
-        arguments = build_parser().parse_args(protect_negative_numbers(argv))
-        status = arguments.execute(arguments)
+        arguments = _parse(argv)
+        status = arguments if isinstance(arguments, int) else arguments.execute(arguments)
     sys.stdout.flush()
     return status
+
+
+def _parse(argv: list[str]) -> argparse.Namespace | int:
+    """What was asked for; a status when help or the version was, or when the arguments have a fault."""
+    try:
+        return build_parser().parse_args(protect_negative_numbers(argv))
+    except SystemExit as stop:
+        return int(stop.code or 0)
 
 
 def _tell_error(error: FitlibError) -> int:
@@ -99,15 +114,17 @@ def _close_pipe() -> int:
     return CLOSED_PIPE
 
 
-def _tell_unexpected(error: Exception) -> int:
-    """One line, and the details in a file (with FITLIB_DEBUG=1 on standard error)."""
+def _tell_unexpected(error: Exception, is_job: bool = False) -> int:
+    """One line, and the details in a file; with FITLIB_DEBUG=1, and in the log of a job, before that line."""
     import traceback
 
     details = "".join(traceback.format_exception(error))
-    if os.environ.get("FITLIB_DEBUG") == "1":
+    line = f"fitlib: unexpected failure: {' '.join(f'{type(error).__name__}: {error}'.split())[:300]}"
+    if is_job or os.environ.get("FITLIB_DEBUG") == "1":
         print(details, file=sys.stderr, end="")
-    summary = " ".join(f"{type(error).__name__}: {error}".split())
-    tell(f"fitlib: unexpected failure: {summary[:300]}; {_keep_details(details)}")
+    else:
+        line = f"{line}; {_keep_details(details)}"
+    tell(line)
     return 1
 
 
@@ -128,7 +145,7 @@ def _tell_system(error: OSError) -> int:
     """A file or disk that failed while in use."""
     if os.environ.get("FITLIB_DEBUG") == "1":
         return _tell_unexpected(error)
-    place = f"{error.filename}: " if error.filename else ""
+    place = f"{error.filename}: " if error.filename else "while reading or writing: "
     tell(f"fitlib: {place}{error.strerror or error}")
     return 1
 
@@ -153,8 +170,6 @@ def main(argv: list[str] | None = None) -> int:
             sys.stdout.reconfigure(errors="backslashreplace")  # a unit such as °C never ends in a traceback
     try:
         return _execute(list(argv))
-    except SystemExit as stop:  # argparse: help, version, or a fault in the arguments
-        return stop.code if isinstance(stop.code, int) else 0
     except KeyboardInterrupt:
         tell("fitlib: interrupted")
         return INTERRUPTED
@@ -165,4 +180,4 @@ def main(argv: list[str] | None = None) -> int:
     except OSError as error:
         return _tell_system(error)
     except Exception as error:
-        return _tell_unexpected(error)
+        return _tell_unexpected(error, is_job=argv[:1] in (["_batch"], ["_publish"]))

@@ -8,6 +8,7 @@ from collections import Counter
 from fitlib.cli.output import align, counted, shorten
 
 LISTED = 40  # datasets shown one by one; of more, those that need a person come first
+WARNED = 10  # warnings of the check that are told again
 NAMED = 5  # datasets named where many have the same steps
 HEADER = ("dataset", "candidate", "verdict", "choice", "loss", "outer_loss", "runner_up", "margin")
 NUMBERS = {"loss", "outer_loss", "margin"}
@@ -37,8 +38,13 @@ def describe_run(summary) -> list[str]:
         rest = counted(len(summary.rows) - len(shown), "more dataset")
         lines.append(f"and {rest}; all {len(summary.rows)} are in {table}")
     lines += ["", _counts(summary.rows)]
-    lines += [f"warning: {warning}" for warning in summary.warnings]
-    return [*lines, _work(summary), f"revision: {summary.path}"]
+    return [*lines, *_warnings(summary.warnings), _work(summary), f"revision: {summary.path}"]
+
+
+def _warnings(warnings) -> list[str]:
+    lines = [f"warning: {warning}" for warning in warnings[:WARNED]]
+    rest = len(warnings) - len(lines)
+    return lines + ([f"and {counted(rest, 'more warning')}: fitlib check tells them all"] if rest else [])
 
 
 def _shown(rows) -> list:
@@ -75,9 +81,10 @@ def _counts(rows) -> str:
 
 
 def _work(summary) -> str:
+    note = summary.note.rstrip(".")
     if not summary.computed and not summary.kept:
-        return summary.note
-    return f"{summary.note} ({counted(summary.computed, 'step')} computed, {summary.kept} kept)"
+        return note
+    return f"{note}: {counted(summary.computed, 'step')} computed, {summary.kept} kept"
 
 
 def describe_dry_run(plan) -> list[str]:
@@ -91,7 +98,7 @@ def describe_dry_run(plan) -> list[str]:
     -------
     list of str
     """
-    lines = [f"warning: {warning}" for warning in plan.warnings]
+    lines = _warnings(plan.warnings)
     if plan.unchanged:
         return [*lines, f"{plan.study}: nothing to do, {plan.revision} holds these results"]
     lines += [f"{plan.study}: {reason}" for reason in plan.reasons]

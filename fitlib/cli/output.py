@@ -118,8 +118,6 @@ def _link_or_rename(temporary: str, path: str) -> None:
     """A hard link fails where a file stands already; a file system without links gets a checked rename."""
     try:
         os.link(temporary, path)
-    except FileExistsError:
-        raise
     except OSError:
         refuse_existing(path)
         os.replace(temporary, path)

@@ -51,8 +51,8 @@ class CalibrationFunction:
     @property
     def cautions(self) -> tuple[str, ...]:
         """What a reader must know before using a value."""
-        statement = self.record["uncertainty_statement"]
-        return tuple(dict.fromkeys([*self.record["cautions"], statement]))
+        cautions, statement = tuple(self.record["cautions"]), self.record["uncertainty_statement"]
+        return cautions if any(statement in caution for caution in cautions) else (*cautions, statement)
 
     @property
     def tie(self) -> bool:

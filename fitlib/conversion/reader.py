@@ -95,7 +95,7 @@ def _matrix(value) -> str:
 
 
 def _vector(value) -> bool:
-    """A test vector within the interval has two numbers; one outside has the verdict alone, or a number for one side."""
+    """Within the interval a test vector has two numbers; outside it may have one, or the verdict alone."""
     if not isinstance(value, dict) or not isinstance(value.get("verdict"), str):
         return False
     return value["verdict"] != "within_interval" or all(_number(value.get(key)) for key in ("stimulus", "response"))
@@ -115,6 +115,8 @@ CHECKS: dict[str, Callable[[object], str]] = {
     "candidate": _text,
     "evaluation": _one_of("inverse", "direct"),
     "function": _one_of("calibration", "analysis"),
+    "weighting": _one_of("none", "inverse_stimulus", "inverse_stimulus_squared"),
+    "weight_scale": _positive,
     "stimulus.quantity": _text,
     "stimulus.unit": _any_text,
     "response.quantity": _text,

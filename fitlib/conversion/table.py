@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import csv
-import io
 from collections import Counter
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, replace
@@ -79,11 +77,12 @@ def _own_names(header: Sequence[str]) -> list[str]:
 
 
 def _write(header: list[str], rows: Iterable[list[str]]) -> str:
-    text = io.StringIO()
-    writer = csv.writer(text, lineterminator="\n")
-    writer.writerow(header)
-    writer.writerows(rows)
-    return text.getvalue()
+    return "".join(",".join(map(_quoted, cells)) + "\n" for cells in [header, *rows])
+
+
+def _quoted(cell: str) -> str:
+    """As RFC 4180 has it; the writer of the standard library leaves a lone carriage return bare."""
+    return '"' + cell.replace('"', '""') + '"' if any(mark in cell for mark in ',"\r\n') else cell
 
 
 def _table(header: list[str], rows: list[list[str]], conversions: list[Conversion], choice: str) -> ConversionTable:
@@ -91,6 +90,13 @@ def _table(header: list[str], rows: list[list[str]], conversions: list[Conversio
     without = sum(conversion.value is None for conversion in conversions)
     verdicts = dict(Counter(conversion.verdict for conversion in conversions))
     return ConversionTable(_write([*header, *COLUMNS], complete), verdicts, without)
+
+
+def _fit(cells: Sequence[str], width: int) -> list[str]:
+    """As many cells as the header has: missing ones empty, surplus ones joined into the last."""
+    if len(cells) > width:
+        return [*cells[: width - 1], ";".join(cells[width - 1 :])]
+    return [*cells, *[""] * (width - len(cells))]
 
 
 def conversion_table(
@@ -120,11 +126,7 @@ def conversion_table(
             known[row.reading] = convert(row.reading, averaged)
         conversion = known[row.reading]
         conversions.append(replace(conversion, note=row.fault) if row.fault else conversion)
-        kept = (
-            [*row.cells[: width - 1], ";".join(row.cells[width - 1 :])] if len(row.cells) > width else list(row.cells)
-        )
-        padded = kept + [""] * (width - len(kept))
-        rows.append([str(row.number), *(guard(cell) for cell in padded)])
+        rows.append([str(row.number), *(guard(cell) for cell in _fit(row.cells, width))])
     return _table(["row", *(guard(name) for name in _own_names(readings.header))], rows, conversions, choice)
 
 

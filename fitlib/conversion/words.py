@@ -15,7 +15,16 @@ def quoted(value: float, unit: str, digits: int = 6) -> str:
 
 
 def with_unit(number: str, unit: str) -> str:
-    """Return a number with its unit; nothing is added for a quantity of dimension one."""
+    """Return a number with its unit; nothing is added for a quantity of dimension one.
+
+    Parameters
+    ----------
+    number, unit : str
+
+    Returns
+    -------
+    str
+    """
     return f"{number} {unit}" if unit and unit != "1" else number
 
 

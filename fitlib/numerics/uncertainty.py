@@ -59,7 +59,8 @@ def coefficient_covariance(
 def mean_standard_uncertainty(curve: Curve, covariance: np.ndarray, x: np.ndarray) -> np.ndarray:
     """Standard uncertainty of the mean response at each x (JCGM 100:2008, eq. 13), shape (n,)."""
     jacobian = curve.jacobian(x)
-    return np.sqrt(np.einsum("ij,jk,ik->i", jacobian, covariance, jacobian))
+    variance = np.einsum("ij,jk,ik->i", jacobian, covariance, jacobian)
+    return np.sqrt(np.maximum(variance, 0.0))  # rounding may leave a zero slightly negative
 
 
 def confidence_band(
