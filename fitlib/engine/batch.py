@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+import time
 import traceback
 from pathlib import Path
 from typing import Any
@@ -12,7 +13,7 @@ from fitlib.engine.files import read_json, write_json
 from fitlib.engine.planfile import Assignment, read_plan_file
 from fitlib.engine.store import Store
 from fitlib.errors import FitlibError
-from fitlib.plan import Batch, DatasetPlan, Plan, digest, numeric_versions, plan_dataset
+from fitlib.plan import Batch, DatasetPlan, Plan, code_identity, digest, numeric_versions, plan_dataset
 
 FORMAT = 1
 
@@ -45,7 +46,8 @@ def run_batch(plan_file: Path, name: str, output: Path) -> dict[str, Any]:
     batch = task.plan.batch(name)
     study = load_study(task.study_file)
     _require_planned(study, task, batch)
-    content = _compute_members(study, task, batch)
+    begin = time.monotonic()
+    content = {**_compute_members(study, task, batch), "seconds": round(time.monotonic() - begin, 3)}
     _require_planned(study, task, batch)  # a file that changed meanwhile may have been read before or after
     write_json(output, {**content, "sha256": digest(content)})
     return content
@@ -53,9 +55,11 @@ def run_batch(plan_file: Path, name: str, output: Path) -> dict[str, Any]:
 
 def _require_planned(study, task: Assignment, batch: Batch) -> None:
     settings = {each.id: each for each in study.datasets}
+    if code_identity(task.work.trees).numerics != task.plan.code["numerics"]:
+        raise FitlibError("the program is not the one that planned the run: run again")
     for planned in map(task.plan.dataset, batch.members):
         if planned.id not in settings or not _as_planned(study, settings[planned.id], planned, task.plan):
-            raise FitlibError(f"{planned.id}: study, data or program changed while the run was going on: run again")
+            raise FitlibError(f"{planned.id}: study or data changed while the run was going on: run again")
 
 
 def _as_planned(study, settings, planned: DatasetPlan, plan: Plan) -> bool:

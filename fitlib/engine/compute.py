@@ -54,7 +54,7 @@ def dataset_result(study, settings, planned: DatasetPlan, store: Store, account:
     """
     result = store.get(Store.key("result", planned.fingerprint))
     if result is not None:
-        account.kept.update(planned.steps)
+        account.kept.update(list(planned.steps))
         return result
     return _compute(study, settings, planned, store, account)
 

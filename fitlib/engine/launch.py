@@ -94,9 +94,7 @@ def run_study(
         return _finished(request, before, reasons, warnings, log)
 
 
-def dry_run(
-    path: str | os.PathLike, results_dir: str | os.PathLike = "results", batches: int = BATCHES
-) -> DryRun:
+def dry_run(path: str | os.PathLike, results_dir: str | os.PathLike = "results", batches: int = BATCHES) -> DryRun:
     """Tell what a run would compute and why; nothing is written.
 
     Parameters
@@ -200,9 +198,7 @@ def _existing_outputs(request: _Request) -> set[str]:
     return {batch.name for batch in request.plan.batches if (request.work.batches / batch.file_name).exists()}
 
 
-def _finished(
-    request: _Request, before: set[str], reasons: tuple[str, ...], warnings: tuple, log: Path
-) -> RunSummary:
+def _finished(request: _Request, before: set[str], reasons: tuple[str, ...], warnings: tuple, log: Path) -> RunSummary:
     marker = read_json(request.work.marker(request.plan.digest))
     if not isinstance(marker, dict) or marker.get("plan") != request.plan.digest:
         raise FitlibError(f"the workflow ended without publishing; details in {shown(log)}")
@@ -240,5 +236,3 @@ def _summary(request: _Request, marker: dict[str, Any], **found) -> RunSummary:
         rows=tuple(SummaryRow(**row) for row in marker["rows"]),
         **found,
     )
-
-

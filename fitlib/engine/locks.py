@@ -111,7 +111,7 @@ def is_locked(path: Path) -> bool:
 
 def _write_holder(descriptor: int) -> None:
     holder = {
-        "user": _user(),
+        "user": user_name(),
         "host": socket.gethostname(),
         "process": os.getpid(),
         "since": datetime.now(UTC).strftime("%Y-%m-%d %H:%M:%S UTC"),
@@ -120,7 +120,8 @@ def _write_holder(descriptor: int) -> None:
     os.pwrite(descriptor, (json.dumps(holder, sort_keys=True) + "\n").encode(), 0)
 
 
-def _user() -> str:
+def user_name() -> str:
+    """Return the name of the person whose process this is."""
     try:
         return getpass.getuser()
     except (OSError, KeyError):  # a user id without a name, as in some containers

@@ -5,6 +5,7 @@ from __future__ import annotations
 import ctypes
 import os
 import signal
+import site
 import subprocess
 import sys
 import threading
@@ -14,6 +15,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from fitlib.errors import FitlibError
+from fitlib.plan import PACKAGE
 
 PARENT = "FITLIB_PARENT_PROCESS"
 ONE_THREAD = {
@@ -57,6 +59,18 @@ def pin_threads() -> None:
     os.environ.update(ONE_THREAD)
 
 
+def share_package() -> None:
+    """Let child processes import the same copy of fitlib as this one, be it a checkout or an installed package.
+
+    Jobs do not look into the folder that they run in for modules. A folder of installed packages is found anyway, and
+    must not come before the standard library.
+    """
+    folder = str(PACKAGE.parent)
+    listed = os.environ.get("PYTHONPATH", "").split(os.pathsep)
+    if folder not in [*listed, *site.getsitepackages(), site.getusersitepackages()]:
+        os.environ["PYTHONPATH"] = os.pathsep.join([folder, *filter(None, listed)])
+
+
 def run_child(command: Sequence[str], folder: Path, log: Path, on_line: Callable[[str], None]) -> Ended:
     """Run a command to its end.
 
@@ -74,10 +88,12 @@ def run_child(command: Sequence[str], folder: Path, log: Path, on_line: Callable
     -------
     Ended
     """
+    share_package()
     log.parent.mkdir(parents=True, exist_ok=True)
     with open(log, "a", encoding="utf-8", errors="backslashreplace") as record:
         child = _start(command, folder, {**os.environ, **ONE_THREAD, PARENT: str(os.getpid())})
         with _forwarded_signals(child) as received:
+            threading.Thread(target=_end_orphans, args=(child,), daemon=True).start()
             for line in child.stdout:
                 record.write(line)
                 on_line(line)
@@ -99,6 +115,13 @@ def _start(command: Sequence[str], folder: Path, environment: Mapping[str, str])
         errors="backslashreplace",
         start_new_session=True,
     )
+
+
+def _end_orphans(child: subprocess.Popen) -> None:
+    """When the child is killed hard, its jobs would go on without it, and nobody would wait for them."""
+    child.wait()
+    with suppress(ProcessLookupError, PermissionError):
+        os.killpg(child.pid, signal.SIGKILL)
 
 
 @contextmanager

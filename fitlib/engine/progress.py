@@ -1,4 +1,4 @@
-"""What a person sees while the workflow runs: stage, done of total, time left. Read from Snakemake's log, line by line."""
+"""What a person sees while the workflow runs: stage, done of total, time left; read from Snakemake's log."""
 
 from __future__ import annotations
 

@@ -13,7 +13,7 @@ from fitlib.engine.files import WorkFolder, work_folder
 from fitlib.engine.locks import Lock, LockedError, is_locked, take_lock
 from fitlib.engine.planfile import plan_study, write_plan_file
 from fitlib.engine.prepare import forget_results, remove_unfinished
-from fitlib.engine.process import follow_parent
+from fitlib.engine.process import follow_parent, share_package
 from fitlib.errors import FitlibError, InputError, Problem
 from fitlib.plan import BATCHES, Plan
 
@@ -85,6 +85,7 @@ def prepare_workflow(config: Mapping[str, Any], config_files: Sequence[Path]) ->
     """
     try:
         follow_parent()
+        share_package()
         return _prepare(config, config_files)
     except FitlibError as error:
         stop(error)

@@ -6,11 +6,11 @@ import numpy as np
 from matplotlib.axes import Axes
 
 from fitlib.figures import style
-from fitlib.figures.scales import decade_scale, set_decades
+from fitlib.figures.scales import decade_scale, linear_scale, set_decades
 from fitlib.figures.sheet import Sheet, empty_panel
 from fitlib.figures.svg import to_svg
 from fitlib.figures.view import Drawn, View, as_array
-from fitlib.figures.words import axis_label, clean, number, percent, unit_text
+from fitlib.figures.words import axis_label, clean, number, percent
 
 _MARKERS = {"chosen": "o", "runner-up": "s", "smallest loss": "v", "most parameters": "^"}
 _ROOM = 75  # letters that fit along the axis
@@ -55,10 +55,10 @@ def _draw(sheet: Sheet, panel: Axes, view: View, curves: list[tuple[Drawn, np.nd
     scale = decade_scale(np.concatenate([view.shown_loss(losses) for _, losses in curves]))
     count = curves[0][1].size
     _set_axes(panel, view, count)
-    label = f"loss, weighted / {unit_text(view.fitted['unit'], exponent=2) or '1'}"
-    if not view.weighted:
-        unit = unit_text(view.fitted["unit"])
-        label = f"root of loss of a level / {unit}" if unit else "root of loss of a level"
+    unit = view.fitted["unit"]
+    label = axis_label("root of loss of a level", unit)
+    if view.weighted:
+        label = axis_label("loss of a level, weighted", unit, exponent=2)
     set_decades(panel.yaxis, scale, label)
     for drawn, losses in curves:
         line, marker = style.ROLE_LINES[drawn.role], _MARKERS[drawn.role]
@@ -76,14 +76,16 @@ def _draw(sheet: Sheet, panel: Axes, view: View, curves: list[tuple[Drawn, np.nd
 def _set_axes(panel: Axes, view: View, count: int) -> None:
     """Levels side by side, the two end levels shaded."""
     levels = view.result["levels"]
-    texts = [number(level["level"], 4) for level in levels]
+    values = as_array([level["level"] for level in levels])
+    along = linear_scale(values)
+    texts = [number(at, 4) for at in (values - along.offset) / 10.0**along.power]
     stride = -(-count // max(2, int(_ROOM / max(len(text) for text in texts))))
     ticks = [at for at in range(0, count, stride) if at == 0 or at <= count - 1 - stride / 2] + [count - 1]
     ticks = list(dict.fromkeys(ticks))
     panel.set_xticks(ticks, labels=[texts[at] for at in ticks])
     panel.set_xlim(-0.6, count - 0.4)
     stimulus = view.settings["stimulus"]
-    panel.set_xlabel(axis_label(f"level, {stimulus['quantity']}", stimulus["unit"]))
+    panel.set_xlabel(along.label(f"level, {stimulus['quantity']}", stimulus["unit"]))
     for end in sorted({0, count - 1}):
         panel.axvspan(end - 0.4, end + 0.4, facecolor="#eceff3", edgecolor="none", zorder=0.5)
 

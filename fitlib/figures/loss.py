@@ -11,8 +11,9 @@ from fitlib.figures.scales import DecadeScale, decade_scale, set_decades
 from fitlib.figures.sheet import Sheet, empty_panel
 from fitlib.figures.svg import to_svg
 from fitlib.figures.view import View, as_array
-from fitlib.figures.words import clean, listed, unit_text
+from fitlib.figures.words import axis_label, clean, listed
 
+_REACH = 30.0
 FITTED_POINTS = "fitted points (not held out)"
 
 
@@ -49,8 +50,9 @@ def scheme_losses(view: View, scheme: str, rows: list[dict], key: str = "loss") 
 def _draw(sheet: Sheet, panel: Axes, view: View, rows: list[dict]) -> None:
     curves = _curves(view, rows)
     threshold = as_array([view.selection.get("threshold")])
-    shown = [view.shown_loss(losses) for _, losses, _ in curves] + [view.shown_loss(threshold)]
-    scale = decade_scale(np.concatenate(shown))
+    shown = np.concatenate([view.shown_loss(losses) for _, losses, _ in curves] + [view.shown_loss(threshold)])
+    cap = _cap(view, rows, curves)
+    scale = decade_scale(shown[~(shown > cap)])
     _set_axes(panel, view, rows, scale)
     for name, losses, line in reversed(curves):
         deciding = view.deciding is not None and name == view.deciding["scheme"]
@@ -61,6 +63,41 @@ def _draw(sheet: Sheet, panel: Axes, view: View, rows: list[dict]) -> None:
     _draw_threshold(sheet, panel, view, scale, threshold)
     _mark_chosen(sheet, panel, view, rows, scale)
     _notes(sheet, view, rows, curves)
+    _note_above(sheet, view, rows, curves, cap)
+
+
+def _cap(view: View, rows: list[dict], curves: list[tuple[str, np.ndarray, style.Line]]) -> float:
+    """Where the panel ends: wild losses must not hide how the deciding loss falls and turns up.
+
+    Shown are all deciding losses from the smallest on to more parameters, and whatever is within `_REACH` of it.
+    """
+    if not curves:
+        return np.inf
+    losses = view.shown_loss(curves[0][1])
+    if not np.nanmin(losses) > 0:
+        return np.inf
+    smallest = int(np.nanargmin(losses))
+    parameters = np.array([row["parameters"] for row in rows])
+    beyond = losses[(parameters >= parameters[smallest]) & np.isfinite(losses)]
+    reach = _REACH**2 if view.weighted else _REACH
+    return float(max(min(beyond.max(), reach**2 * losses[smallest]), reach * losses[smallest]))
+
+
+def _note_above(
+    sheet: Sheet, view: View, rows: list[dict], curves: list[tuple[str, np.ndarray, style.Line]], cap: float
+) -> None:
+    """Name every candidate with a loss above the panel."""
+    above: dict[str, list[str]] = {}
+    for name, losses, _ in curves:
+        for row, loss in zip(rows, view.shown_loss(losses), strict=True):
+            if loss > cap:
+                above.setdefault(row["candidate"], []).append(name)
+    words = [
+        f"{clean(candidate, 40)} ({'all' if len(names) == len(curves) else listed(names)})"
+        for candidate, names in above.items()
+    ]
+    if words:
+        sheet.note(f"Losses above the panel: {'; '.join(words[:8])}{' and others' if len(words) > 8 else ''}.")
 
 
 def _curves(view: View, rows: list[dict]) -> list[tuple[str, np.ndarray, style.Line]]:
@@ -99,11 +136,8 @@ def _set_axes(panel: Axes, view: View, rows: list[dict], scale: DecadeScale) -> 
     panel.set_xlim(x.min() - 0.5, x.max() + 0.6)
     panel.set_xticks(numbers[::stride], labels=[str(number) for number in numbers[::stride]])
     panel.set_xlabel("number of parameters")
-    what = f"loss, weighted / {unit_text(view.fitted['unit'], exponent=2) or '1'}"
-    if not view.weighted:
-        what = "root of loss"
-        if unit := unit_text(view.fitted["unit"]):
-            what += f" / {unit}"
+    unit = view.fitted["unit"]
+    what = axis_label("loss, weighted", unit, exponent=2) if view.weighted else axis_label("root of loss", unit)
     set_decades(panel.yaxis, scale, what)
 
 
@@ -149,7 +183,7 @@ def _draw_threshold(sheet: Sheet, panel: Axes, view: View, scale: DecadeScale, t
 
 
 def _mark_chosen(sheet: Sheet, panel: Axes, view: View, rows: list[dict], scale: DecadeScale) -> None:
-    """Ring the chosen candidate and name it."""
+    """Ring the chosen candidate; the legend names it."""
     scheme = view.deciding or view.shown_scheme
     place = [number for number, row in enumerate(rows) if row["candidate"] == view.chosen]
     if not place:
@@ -163,11 +197,6 @@ def _mark_chosen(sheet: Sheet, panel: Axes, view: View, rows: list[dict], scale:
             "markeredgewidth": 1.3, "linestyle": "none"}  # fmt: skip
     if np.isfinite(y):
         panel.plot([x], [y], zorder=4, **look)
-        panel.annotate(
-            clean(view.chosen, 40), (x, y), xytext=(7, 9), textcoords="offset points", fontsize=style.TEXT_SIZE,
-            fontweight="bold",
-            bbox={"facecolor": style.PAPER, "edgecolor": "none", "alpha": 0.8, "pad": 0.8}, zorder=5,
-        )  # fmt: skip
     sheet.entry(Line2D([], [], **{**look, "markersize": 8}), f"chosen: {clean(view.chosen, 40)}")
 
 

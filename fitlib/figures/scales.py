@@ -107,7 +107,7 @@ class DecadeScale:
         positive = values > 0
         at[positive] = np.log10(values[positive])
         at[values <= 0] = self.lower
-        return np.clip(at, self.lower, None)
+        return np.clip(at, self.lower, self.upper + BEYOND * (self.upper - self.lower))
 
     def ticks(self) -> tuple[list[float], list[str], list[float]]:
         """Major tick positions, their texts, and minor tick positions."""

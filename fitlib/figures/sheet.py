@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.backends.backend_svg import FigureCanvasSVG
 from matplotlib.figure import Figure
@@ -94,8 +95,7 @@ class Sheet:
         """As many columns as fit side by side; the legend is filled column by column."""
         lengths = [len(text) for _, text in self.legend]
         for columns in range(min(5, len(lengths)), 1, -1):
-            rows = -(-len(lengths) // columns)
-            widths = [max(lengths[at : at + rows]) * _LETTER + _HANDLE for at in range(0, len(lengths), rows)]
+            widths = [max(column) * _LETTER + _HANDLE for column in np.array_split(lengths, columns)]
             if sum(widths) <= WIDTH - 0.2:
                 return columns
         return 1

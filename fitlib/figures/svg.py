@@ -39,6 +39,7 @@ def to_svg(figure: Figure, name: str, title: str, description: str) -> str:
     root = ElementTree.fromstring(raw.getvalue())
     _drop_metadata(root)
     _share_styles(root)
+    _share_font(root)
     _name_ids(root, name)
     _shorten_numbers(root)
     _describe(root, name, title, description)
@@ -46,10 +47,13 @@ def to_svg(figure: Figure, name: str, title: str, description: str) -> str:
 
 
 def _drop_metadata(root: ElementTree.Element) -> None:
-    for child in list(root):
-        if child.tag.endswith("}metadata"):
-            root.remove(child)
+    """Without metadata, and with the one style rule as attributes, so that it cannot reach into a page."""
+    for parent in root.iter():
+        for child in list(parent):
+            if child.tag.endswith(("}metadata", "}style")):
+                parent.remove(child)
     root.attrib.pop("version", None)
+    root.attrib |= {"stroke-linejoin": "round", "stroke-linecap": "butt"}
 
 
 def _share_styles(root: ElementTree.Element) -> None:
@@ -61,6 +65,15 @@ def _share_styles(root: ElementTree.Element) -> None:
             group.set("style", styles.pop() or "")
             for use in uses:
                 use.attrib.pop("style", None)
+
+
+def _share_font(root: ElementTree.Element) -> None:
+    """Name the font once."""
+    font = "font-family: 'DejaVu Sans', sans-serif"
+    for text in root.iter(f"{{{_SVG}}}text"):
+        parts = [part for part in text.get("style", "").split("; ") if part != font]
+        text.set("style", "; ".join(parts))
+    root.set("font-family", "'DejaVu Sans', Verdana, Arial, sans-serif")
 
 
 def _references(element: ElementTree.Element) -> list[str]:

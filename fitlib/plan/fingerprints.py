@@ -17,8 +17,11 @@ from fitlib.plan.canonical import digest, plain
 WITHOUT_EFFECT = ("path", "folder", "text", "lines", "warnings", "datasets")
 """Of a study: where it stands, how it is written; its datasets come one by one."""
 
-ONLY_SHOWN = ("format", "name", "title", "purpose", "stimulus", "response")
+ONLY_SHOWN = ("format", "name", "title", "purpose")
 """Of a study: enters the assembled result at most."""
+
+UNITS = ("stimulus", "response")
+"""Of a study: no number depends on it, but the reasons of a choice name it."""
 
 FITS_UNUSED = ("id", "file_name", "key", "record")
 """Of a dataset: no number depends on it."""
@@ -88,7 +91,7 @@ def step_settings(study, dataset) -> dict[str, dict[str, str]]:
     settings = {"fits": fits}
     for scheme in study.validation:
         settings[f"scheme:{scheme.id}"] = {**fits, **_scheme_settings(study, scheme)}
-    decision = {name: digest(getattr(study, name)) for name in DECISIONS}
+    decision = {name: digest(getattr(study, name)) for name in (*DECISIONS, *UNITS)}
     settings["selection"] = {**fits, **decision}
     shown = {name: digest(getattr(study, name)) for name in ONLY_SHOWN}
     settings["result"] = {**fits, **decision, **shown, "record": digest(dataset.record)}
@@ -96,7 +99,7 @@ def step_settings(study, dataset) -> dict[str, dict[str, str]]:
 
 
 def _fits_settings(study, dataset) -> dict[str, str]:
-    known = (*WITHOUT_EFFECT, *ONLY_SHOWN, *DECISIONS)
+    known = (*WITHOUT_EFFECT, *ONLY_SHOWN, *UNITS, *DECISIONS)
     of_study = {name: value for name, value in _record(study).items() if name not in known}
     of_dataset = {name: value for name, value in _record(dataset).items() if name not in FITS_UNUSED}
     return {name: digest(value) for name, value in {**of_dataset, **of_study}.items()}
@@ -112,11 +115,7 @@ def _scheme_settings(study, scheme) -> dict[str, str]:
 
 def _record(record) -> Mapping[str, Any]:
     """The fields of a study or dataset by name; the study's own bytes and paths have no canonical text."""
-    return {
-        name: plain(getattr(record, name))
-        for name in record.__dataclass_fields__
-        if name not in WITHOUT_EFFECT
-    }
+    return {name: plain(getattr(record, name)) for name in record.__dataclass_fields__ if name not in WITHOUT_EFFECT}
 
 
 def step_fingerprints(

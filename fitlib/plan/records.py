@@ -127,8 +127,11 @@ class Plan:
         raise FitlibError(f"batch {name} is not part of the plan {self.digest[:16]}: run again")
 
     def to_dict(self) -> dict[str, Any]:
-        """Return the plan as JSON has it."""
-        return {"format": FORMAT, **asdict(self)}
+        """Return the plan as JSON has it; steps are pairs, since their order must outlive sorted keys."""
+        content = {"format": FORMAT, **asdict(self)}
+        for each in content["datasets"]:
+            each["steps"] = [[step, fingerprint] for step, fingerprint in each["steps"].items()]
+        return content
 
 
 def plan_from_dict(content: Mapping[str, Any]) -> Plan:
@@ -151,10 +154,10 @@ def plan_from_dict(content: Mapping[str, Any]) -> Plan:
         if content["format"] != FORMAT:
             raise FitlibError(f"plan of format {content['format']!r}; this program writes format {FORMAT}: run again")
         values = {key: value for key, value in content.items() if key != "format"}
-        values["datasets"] = tuple(DatasetPlan(**each) for each in values["datasets"])
+        values["datasets"] = tuple(DatasetPlan(**{**each, "steps": dict(each["steps"])}) for each in values["datasets"])
         values["batches"] = tuple(
             Batch(each["name"], tuple(each["members"]), each["digest"]) for each in values["batches"]
         )
         return Plan(**values)
-    except (KeyError, TypeError) as error:
+    except (KeyError, TypeError, ValueError) as error:
         raise FitlibError(f"not a plan ({error}): run again") from None

@@ -25,3 +25,8 @@ def installed_version(name: str) -> str:
         return version(name)
     except PackageNotFoundError:
         return "not installed"
+
+
+def fitlib_version() -> str:
+    """Return the version of this program."""
+    return installed_version("fitlib")

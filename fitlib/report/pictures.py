@@ -4,15 +4,14 @@ from __future__ import annotations
 
 import re
 
-from markupsafe import Markup
-
 _TAG = re.compile(r"<[^<>]*>")
 _ID = re.compile(r'\b(id="|href="#|url\(#)')
 _LABELLED_BY = re.compile(r'(aria-labelledby=")([^"]*)"')
-_UNWANTED = re.compile(r"<\s*(?:script|foreignObject|iframe|style)\b|<[^<>]*\s(?:on[a-z]+\s*=|href\s*=\s*\"(?!#|data:image/png))", re.I)
+_SCRIPTABLE = re.compile(r"<\s*(?:script|foreignObject|iframe|style|a)\b|<[^<>]*\son[a-z]+\s*=", re.IGNORECASE)
+_LINK = re.compile(r'<[^<>]*\b(?:href|src)\s*=\s*"(?!#|data:image/png;)', re.IGNORECASE)
 
 
-def inline_svg(text: str, prefix: str) -> Markup:
+def inline_svg(text: str, prefix: str) -> str:
     """Return SVG text that can stand in the report.
 
     Parameters
@@ -24,22 +23,21 @@ def inline_svg(text: str, prefix: str) -> Markup:
 
     Returns
     -------
-    Markup
-        Marked as safe for the template.
+    str
+        Text that the template may write as it is.
 
     Raises
     ------
     ValueError
         If the text holds a script, an event handler or a link, which no figure of this program has.
     """
-    if _UNWANTED.search(text):
+    if _SCRIPTABLE.search(text) or _LINK.search(text):
         raise ValueError(f"figure {prefix} holds a script, an event handler or a link")
-    text = _TAG.sub(lambda tag: _prefixed(tag[0], prefix), text)
-    return Markup(text.strip())
+    return _TAG.sub(lambda tag: _prefixed(tag[0], prefix), text).strip()
 
 
 def _prefixed(tag: str, prefix: str) -> str:
-    tag = _ID.sub(lambda found: found[1] + f"{prefix}-", tag)
+    tag = _ID.sub(lambda found: f"{found[1]}{prefix}-", tag)
     return _LABELLED_BY.sub(
         lambda found: found[1] + " ".join(f"{prefix}-{name}" for name in found[2].split()) + '"', tag
     )

@@ -33,8 +33,11 @@ def text_number(value: float | None, digits: int = 2) -> str:
         return "not available"
     if value == 0:
         return "0"
-    decimal = _decimal(value)
-    return _written(_to_quantum(decimal, decimal.adjusted() - digits + 1), digits)
+    short = _significant(value, digits)
+    top = short.adjusted()
+    if -5 <= top < 5:
+        return f"{short:f}"
+    return f"{short.scaleb(-top):f} × {power_of_ten(top)}"
 
 
 def rounded(value: float | None, uncertainty: float | None, digits: int = 2) -> tuple[str, str]:
@@ -62,11 +65,11 @@ def rounded(value: float | None, uncertainty: float | None, digits: int = 2) -> 
         return "not available", text_number(uncertainty, digits)
     if not is_number(uncertainty) or uncertainty <= 0 or abs(value) / uncertainty > 1e16:
         return table_number(float(value)), text_number(uncertainty, digits)
-    width = _to_quantum(_decimal(uncertainty), _decimal(uncertainty).adjusted() - digits + 1)
+    width = _significant(uncertainty, digits)
     quantum = width.adjusted() - digits + 1
-    estimate, width = _to_quantum(_decimal(value), quantum), _to_quantum(_decimal(uncertainty), quantum)
+    estimate = _to_quantum(_decimal(value), quantum)
     top = max(estimate.adjusted() if estimate else quantum, width.adjusted())
-    if quantum <= 0 and -5 <= top:
+    if quantum <= 0 and top >= -5:
         return f"{estimate:f}", f"{width:f}"
     return f"{estimate.scaleb(-top):f} × {power_of_ten(top)}", f"{width.scaleb(-top):f} × {power_of_ten(top)}"
 
@@ -84,7 +87,7 @@ def percent(share: float | None) -> str:
         return "over 99 %"
     if 0 < share < 0.0005:
         return "under 0.1 %"
-    return f"{text_number(100 * share, 2 if abs(share) < 0.1 else 3)} %"
+    return f"{text_number(100 * share, 2)} %"
 
 
 def probability(value: float | None) -> str:
@@ -129,9 +132,8 @@ def _to_quantum(value: Decimal, exponent: int) -> Decimal:
     return value.quantize(Decimal(1).scaleb(exponent), context=_CONTEXT)
 
 
-def _written(value: Decimal, digits: int) -> str:
-    """Plain where it is short, else with a power of ten; digits that are not known are not filled with zeros."""
-    top = value.adjusted()
-    if -5 <= top < max(digits, 5):
-        return f"{value:f}" if value.as_tuple().exponent <= 0 else f"{int(value)}"
-    return f"{value.scaleb(-top):f} × {power_of_ten(top)}"
+def _significant(value: float, digits: int) -> Decimal:
+    """A number of significant digits, also where rounding up gains one (9.96 becomes 10)."""
+    decimal = _decimal(value)
+    top = _to_quantum(decimal, decimal.adjusted() - digits + 1).adjusted()
+    return _to_quantum(decimal, top - digits + 1)

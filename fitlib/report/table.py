@@ -18,14 +18,30 @@ class Cell:
 
 
 @dataclass(frozen=True)
+class Column:
+    """The head of a column; its kind is ``n`` for numbers, ``id`` for names that are not broken, or nothing."""
+
+    text: str
+    kind: str = ""
+
+
+_KINDS = {"#": "n", "=": "id"}
+
+
+def make_column(head: str) -> Column:
+    """A column from its head: ``#`` before it marks numbers, ``=`` marks names."""
+    kind = _KINDS.get(head[:1], "")
+    return Column(head[1:] if kind else head, kind)
+
+
+@dataclass(frozen=True)
 class Table:
     """A table with a caption.
 
     Attributes
     ----------
     caption : str
-    columns : tuple of str
-        Column heads. One that starts with ``#`` holds numbers (the mark is not shown).
+    columns : tuple of Column
     rows : tuple of tuple of Cell
         The first cell of a row is its head.
     note : str
@@ -33,7 +49,7 @@ class Table:
     """
 
     caption: str
-    columns: tuple[str, ...]
+    columns: tuple[Column, ...]
     rows: tuple[tuple[Cell, ...], ...]
     note: str = ""
     foot: tuple[Cell, ...] = field(default=())
@@ -49,7 +65,7 @@ def make_table(
     caption, note : str
         See `Table`.
     columns : list of str
-        See `Table`.
+        Heads, see `make_column`.
     rows : list of list
         Text or `Cell` for each column.
     foot : list, optional
@@ -61,7 +77,13 @@ def make_table(
     """
     if not rows:
         return None
-    return Table(caption, tuple(columns), tuple(_cells(row) for row in rows), note, _cells(foot or []))
+    return Table(
+        caption,
+        tuple(make_column(head) for head in columns),
+        tuple(_cells(row) for row in rows),
+        note,
+        _cells(foot or []),
+    )
 
 
 def _cells(row: list[object]) -> tuple[Cell, ...]:

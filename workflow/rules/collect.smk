@@ -8,8 +8,8 @@ rule publish:
         RUN.publish_log,
     conda:
         "../envs/fitlib.yaml"
+    threads: 1
     params:
         python=this_python,
-    threads: 1
     shell:
-        "{params.python:q} -P -m fitlib _publish {input.plan:q} {output.marker:q} 2> {log:q}"
+        "{params.python:q} -P -m fitlib _publish {input.plan:q} {output.marker:q} > {log:q} 2>&1"

@@ -67,7 +67,7 @@ def append(path, text):
 def test_a_wheel_and_a_checkout_agree(package, monkeypatch):
     wheel = code_identity()
     monkeypatch.undo()
-    assert code.PACKAGE != package
+    assert package != code.PACKAGE
     assert code_identity() == wheel
 
 
@@ -82,7 +82,12 @@ def test_numeric_code_changes_results(package, name):
 
 @pytest.mark.parametrize(
     ("name", "drawing"),
-    [("figures/new.py", True), ("report/page.html", False), ("_workflow/Snakefile", False), ("unheard_of/new.py", True)],
+    [
+        ("figures/new.py", True),
+        ("report/page.html", False),
+        ("_workflow/Snakefile", False),
+        ("unheard_of/new.py", True),
+    ],
 )
 def test_rendering_code_changes_no_results(package, name, drawing):
     before = code_identity()

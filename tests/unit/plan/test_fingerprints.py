@@ -34,7 +34,7 @@ def test_steps_are_named_in_the_order_of_the_study(folder):
         ("random_seed: 7", "random_seed: 8", {"scheme:bootstrap", "selection", "result"}),
         ("rule: one_standard_error", "rule: smallest_loss", {"selection", "result"}),
         ("title: Trial", "title: Another", {"result"}),
-        ("unit: kN", "unit: N", {"result"}),
+        ("unit: kN", "unit: N", {"selection", "result"}),
         ("serial_number: '2'", "serial_number: '3'", set()),
     ],
 )
@@ -130,5 +130,10 @@ def test_every_field_that_is_left_out_exists():
     """A misspelt name here would let a setting count that should not, or hide a renamed one."""
     of_study = {field.name for field in fields(Study)}
     of_dataset = {field.name for field in fields(DatasetSettings)}
-    assert {*fingerprints.WITHOUT_EFFECT, *fingerprints.ONLY_SHOWN, *fingerprints.DECISIONS} <= of_study
+    assert {
+        *fingerprints.WITHOUT_EFFECT,
+        *fingerprints.ONLY_SHOWN,
+        *fingerprints.UNITS,
+        *fingerprints.DECISIONS,
+    } <= of_study
     assert set(fingerprints.FITS_UNUSED) <= of_dataset

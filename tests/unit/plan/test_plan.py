@@ -63,8 +63,9 @@ def test_batches_are_filled_evenly():
 
 def test_a_plan_survives_its_file(folder):
     plan = folder.plan()
-    again = plan_from_dict(json.loads(json.dumps(plan.to_dict())))
+    again = plan_from_dict(json.loads(json.dumps(plan.to_dict(), sort_keys=True)))
     assert again.to_dict() == plan.to_dict()
+    assert list(again.dataset("cell-1").steps) == list(plan.dataset("cell-1").steps)
     assert again.dataset("cell-2").fingerprint == plan.dataset("cell-2").fingerprint
     assert again.batches == plan.batches
 
