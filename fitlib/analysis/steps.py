@@ -129,6 +129,8 @@ def _selection(candidates: CandidateSet, study, dataset, earlier: dict[str, dict
         result |= _chosen(candidates, choice, evidence, rule, eligible, names)
         result |= _resampled(candidates, study, rule, eligible)
     result["reasons"] = candidate_reasons(names, choice, obstacles, records, rule.name, cannot)
+    if result["candidate"] is not None:
+        result["choice_reason"] = result["reasons"][result["candidate"]].removeprefix("chosen: ")
     result |= _verdict(result["candidate"], records, candidates.data, study, dataset, cannot, eligible)
     return result
 
@@ -166,7 +168,6 @@ def _chosen(candidates: CandidateSet, choice: Choice, evidence, rule, eligible, 
     return {
         "candidate": names[choice.chosen],
         "choice": "tie" if tied else "decided",
-        "choice_reason": f"the rule cannot tell it from {', '.join(tied)}" if tied else "",
         "runner_up": None if choice.runner_up is None else names[choice.runner_up],
         "margin": number(choice.margin),
         "smallest_loss_candidate": None if choice.smallest is None else names[choice.smallest],

@@ -118,15 +118,15 @@ def _stability(result: dict, chosen: dict) -> list[str]:
         return []
     rival = max(shares, key=lambda name: shares[name] or 0.0)
     return [
-        f"the choice is not stable: the rule takes {chosen['candidate']} in {share:.0%} of the resamples"
-        + (f", {rival} in {shares[rival]:.0%}" if rival != chosen["candidate"] else "")
+        f"the choice is not stable: the rule takes {chosen['candidate']} in {share * 100:.0f} % of the resamples"
+        + (f", {rival} in {shares[rival] * 100:.0f} %" if rival != chosen["candidate"] else "")
     ]
 
 
 def _rivals(result: dict, chosen: dict) -> list[str]:
     selection, lines = result["selection"], []
     if selection["choice"] == "tie":
-        lines.append(f"tie: {selection['choice_reason']}; the simplest is issued")
+        lines.append(f"the choice is a tie with {listed(selection['tied'])}; the simplest is issued")
     inner = selection["interior_candidate"]
     if inner is not None and inner != chosen["candidate"]:
         lines.append(f"without the losses of the first and last level the rule would take {inner}")

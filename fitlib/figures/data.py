@@ -148,7 +148,7 @@ def _draw_bands(sheet: Sheet, panel: Axes, view: View, x: np.ndarray, scale: Lin
         sheet.entry(Patch(facecolor=style.BAND, edgecolor="none"), text)
     if band := view.interval("prediction_interval"):
         low, high, share = band
-        look = {"color": style.FAINT, "linestyle": (0, (7, 3)), "linewidth": 1.1}
+        look = {"color": style.FAINT, "linestyle": (0, (10, 2.5, 2.5, 2.5)), "linewidth": 1.1}
         for edge in (low, high):
             panel.plot(x, scale(edge - base), zorder=2, **look)
         text = f"prediction interval of one new observation, coverage probability {share:g}"
