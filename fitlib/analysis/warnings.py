@@ -56,11 +56,6 @@ def _schemes(result: dict) -> list[str]:
         for scheme in result["schemes"]
         if scheme["status"] != "evaluated"
     ]
-    for scheme in result["schemes"]:
-        deficient = {name: count for name, count in (scheme["rank_deficient_draws"] or {}).items() if count}
-        if deficient:
-            named = listed([f"{count} for {name}" for name, count in deficient.items()])
-            lines.append(f"{scheme['scheme']}: draws with too few levels, of {scheme['draws']}: {named}")
     without = result["selection"]["draws_without_choice"]
     if without:
         lines.append(f"in {counted(without, 'bootstrap draw')} the rule could not take any candidate")
@@ -89,7 +84,7 @@ def _suspects(result: dict) -> list[str]:
 
 def _levels(result: dict, chosen: dict) -> list[str]:
     parts = result["selection"]["components"]
-    if not parts["level_deviation_found"]:
+    if not parts["level_deviation_found"] or result["selection"]["verdict"] == "inadequate":
         return []
     unit = result["settings"]["fitted"]["unit"]
     text = f"levels carry their own deviation: standard deviation {amount(parts['level_deviation'], unit, 2)}"
@@ -139,7 +134,8 @@ def _rivals(result: dict, chosen: dict) -> list[str]:
     lines += _stability(result, chosen)
     by_series = selection["rankings"].get("leave_one_series_out")
     parameters = {item["candidate"]: item["parameters"] for item in result["candidates"]}
-    if by_series is not None and parameters[by_series] > parameters[chosen["candidate"]]:
+    found = selection["components"]["level_deviation_found"]
+    if found and by_series is not None and parameters[by_series] > parameters[chosen["candidate"]]:
         lines.append(
             f"leave_one_series_out has its smallest loss with {by_series}: a series left out shares its levels, and "
             "their deviations, with those kept in, so that it favours more parameters; it does not decide"

@@ -11,7 +11,11 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from fitlib.errors import FitlibError
+from fitlib.plan import Plan
+
 TEMPORARY = ".new-"
+KEPT_LOGS = 20
 
 
 def write_atomic(path: Path, content: str | bytes) -> None:
@@ -148,6 +152,17 @@ class WorkFolder:
         if not ignore.exists():
             write_atomic(ignore, "*\n")
 
+    def of_other_plans(self, plan: Plan) -> list[Path]:
+        """Return the files that only other plans have; from the store they are made again in no time."""
+        present = {Path(batch.file_name).stem for batch in plan.batches}
+        outputs = [*self.batches.glob("*.json"), *(self.logs / "batches").glob("*.log")]
+        markers = [*self.published.glob("*.json"), *(self.root / "plans").glob("*.json"), *self.logs.glob("publish-*")]
+        return [
+            *(path for path in outputs if path.stem not in present),
+            *(path for path in markers if path.stem.removeprefix("publish-") != plan.digest[:16]),
+            *sorted(self.logs.glob("run-*.log"))[:-KEPT_LOGS],
+        ]
+
     def leftovers(self) -> Iterator[Path]:
         """Yield the temporary files that killed processes left behind."""
         return self.root.rglob(f"{TEMPORARY}*")
@@ -172,8 +187,6 @@ def plain_os_errors(what: str) -> Iterator[None]:
     FitlibError
         In place of an ``OSError``.
     """
-    from fitlib.errors import FitlibError
-
     try:
         yield
     except OSError as error:

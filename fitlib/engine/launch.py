@@ -21,8 +21,8 @@ from fitlib.engine.process import Ended, run_child
 from fitlib.engine.progress import Events, Progress
 from fitlib.engine.store import Store
 from fitlib.engine.summary import DryRun, RunSummary, SummaryRow
-from fitlib.engine.workflow import ANOTHER_RUN, require_sound_data
-from fitlib.errors import FitlibError
+from fitlib.engine.workflow import ANOTHER_RUN, CHANGED, require_sound_data
+from fitlib.errors import FitlibError, InputError, Problem
 from fitlib.plan import BATCHES, Plan, describe_changes, workflow_folder
 
 UNCHANGED = "nothing has changed since: no work, no new revision"
@@ -127,6 +127,9 @@ def dry_run(path: str | os.PathLike, results_dir: str | os.PathLike = "results",
 def _plan(path: str | os.PathLike, results_dir: str | os.PathLike, batches: int) -> _Request:
     from fitlib.study import load_study
 
+    if os.path.exists(path) and not os.path.isfile(path):
+        message = "is not a regular file; a run reads the study more than once, so that it must be one"
+        raise InputError([Problem(os.fspath(path), message)])
     study = load_study(os.fspath(path))
     work = work_folder(results_dir, study.name)
     return _Request(
@@ -201,7 +204,7 @@ def _existing_outputs(request: _Request) -> set[str]:
 def _finished(request: _Request, before: set[str], reasons: tuple[str, ...], warnings: tuple, log: Path) -> RunSummary:
     marker = read_json(request.work.marker(request.plan.digest))
     if not isinstance(marker, dict) or marker.get("plan") != request.plan.digest:
-        raise FitlibError(f"the workflow ended without publishing; details in {shown(log)}")
+        raise FitlibError(f"{CHANGED}; details in {shown(log)}")
     account = _account(request, before)
     return _summary(
         request,

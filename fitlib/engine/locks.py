@@ -7,7 +7,6 @@ import getpass
 import json
 import os
 import socket
-import time
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from pathlib import Path
@@ -68,7 +67,7 @@ def take_lock(path: Path, what: str, wait: bool = False) -> Lock:
     path.parent.mkdir(parents=True, exist_ok=True)
     descriptor = os.open(path, os.O_RDWR | os.O_CREAT | os.O_CLOEXEC, 0o644)
     try:
-        _flock(descriptor, wait)
+        fcntl.flock(descriptor, fcntl.LOCK_EX | (0 if wait else fcntl.LOCK_NB))
         _write_holder(descriptor)
     except BlockingIOError:
         os.close(descriptor)
@@ -77,36 +76,6 @@ def take_lock(path: Path, what: str, wait: bool = False) -> Lock:
         os.close(descriptor)
         raise
     return Lock(path, descriptor)
-
-
-def _flock(descriptor: int, wait: bool) -> None:
-    """Somebody who only looks whether the lock is free holds it for an instant: try again before giving up."""
-    if wait:
-        fcntl.flock(descriptor, fcntl.LOCK_EX)
-        return
-    for pause in (0.05, 0.1, None):
-        try:
-            fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
-            return
-        except BlockingIOError:
-            if pause is None:
-                raise
-            time.sleep(pause)
-
-
-def is_locked(path: Path) -> bool:
-    """Return whether somebody holds the lock now."""
-    try:
-        descriptor = os.open(path, os.O_RDONLY | os.O_CLOEXEC)
-    except OSError:
-        return False
-    try:
-        fcntl.flock(descriptor, fcntl.LOCK_SH | fcntl.LOCK_NB)
-    except BlockingIOError:
-        return True
-    finally:
-        os.close(descriptor)
-    return False
 
 
 def _write_holder(descriptor: int) -> None:

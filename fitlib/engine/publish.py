@@ -11,7 +11,7 @@ from fitlib.engine.batch import read_batch_output
 from fitlib.engine.compute import Account, dataset_figures, dataset_result
 from fitlib.engine.files import WorkFolder, remove, write_json
 from fitlib.engine.locks import take_lock
-from fitlib.engine.planfile import Assignment, read_plan_file
+from fitlib.engine.planfile import Assignment, plan_study, read_plan_file
 from fitlib.engine.runfacts import run_facts
 from fitlib.engine.store import Store
 from fitlib.engine.summary import SummaryRow
@@ -48,6 +48,8 @@ def run_publish(plan_file: Path, marker: Path) -> dict[str, Any]:
     outputs = planned_outputs(task.plan, task.work)
     require_all(outputs)
     study = load_study(task.study_file)
+    if plan_study(study, task.work, 1).digest != task.plan.digest:
+        raise FitlibError("the study, its data or the program changed while the run was going on: run again")
     bundle, figures = _gather(study, task)
     published = _publish(study, task, bundle, figures, _durations(outputs, begin))
     content = {
@@ -115,8 +117,6 @@ def _gather(study, task: Assignment) -> tuple[dict[str, Any], Figures]:
     settings = {each.id: each for each in study.datasets}
     results, figures = [], {}
     for planned in task.plan.datasets:
-        if planned.id not in settings:
-            raise FitlibError(f"{planned.id}: no longer in the study: it changed while the run was going on: run again")
         result = dataset_result(study, settings[planned.id], planned, store, account)
         results.append(result)
         figures[planned.file_name] = dataset_figures(result, task.plan, store, account)
@@ -180,9 +180,7 @@ def _durations(outputs: list[dict[str, Any]], begin: float) -> dict[str, float]:
 
 def _record(task: Assignment, marker: Path, content: dict[str, Any]) -> None:
     """The marker last: without it the plan counts as not published, and publishing again does no harm."""
-    present = {batch.file_name for batch in task.plan.batches}
-    outdated = [path for path in task.work.batches.glob("*.json") if path.name not in present]
-    for path in [*task.work.published.glob("*.json"), *outdated]:  # the store makes outputs again in no time
+    for path in task.work.of_other_plans(task.plan):
         remove(path)
     write_json(task.work.latest_plan, task.plan.to_dict())
     write_json(marker, content)

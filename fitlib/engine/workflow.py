@@ -9,8 +9,8 @@ from pathlib import Path
 from typing import Any, NoReturn
 from urllib.parse import unquote, urlsplit
 
-from fitlib.engine.files import WorkFolder, work_folder
-from fitlib.engine.locks import Lock, LockedError, is_locked, take_lock
+from fitlib.engine.files import WorkFolder, read_json, work_folder
+from fitlib.engine.locks import Lock, LockedError, take_lock
 from fitlib.engine.planfile import plan_study, write_plan_file
 from fitlib.engine.prepare import forget_results, remove_unfinished
 from fitlib.engine.process import follow_parent, share_package
@@ -18,6 +18,7 @@ from fitlib.errors import FitlibError, InputError, Problem
 from fitlib.plan import BATCHES, Plan
 
 ANOTHER_RUN = "another run of this study"
+CHANGED = "the study, its data or the program changed while the run was going on: run again"
 
 
 @dataclass
@@ -60,6 +61,11 @@ class WorkflowRun:
     def publish_log(self) -> str:
         """What the publishing job says."""
         return self.work.publish_log(self.plan.digest).relative_to(self.work.root).as_posix()
+
+    def tell(self) -> None:
+        """Say where the results are."""
+        content = read_json(self.work.marker(self.plan.digest)) or {}
+        print(f"fitlib: {content.get('note', 'nothing was published')}", file=sys.stderr, flush=True)
 
     def start(self) -> None:
         """Take the run lock and hold it; end this process with a plain sentence when somebody else has it."""
@@ -106,12 +112,19 @@ def _prepare(config: Mapping[str, Any], config_files: Sequence[Path]) -> Workflo
     batches = _batches(config)
     work = work_folder(_path(config.get("results_dir") or "results"), study.name)
     plan = plan_study(study, work, batches)
-    if config.get("checked_plan") != plan.digest:
-        require_sound_data(study)
+    _require_checked(study, plan, config.get("checked_plan"))
     work.create()
     _remove_unfinished(plan, work, bool(config.get("fresh")))
     write_plan_file(plan, study_file, work)
     return WorkflowRun(plan, work)
+
+
+def _require_checked(study, plan: Plan, checked_plan: str | None) -> None:
+    """``fitlib run`` has checked the data before, and says which plan that was."""
+    if checked_plan is None:
+        require_sound_data(study)
+    elif checked_plan != plan.digest:
+        raise FitlibError(CHANGED)
 
 
 def _remove_unfinished(plan: Plan, work: WorkFolder, fresh: bool) -> None:
@@ -178,8 +191,3 @@ def _batches(config: Mapping[str, Any]) -> int:
     if not isinstance(value, int) or isinstance(value, bool) or value < 1:
         raise FitlibError(f"batches: {value!r} is not allowed; a whole number of 1 or more")
     return value
-
-
-def is_running(work: WorkFolder) -> bool:
-    """Return whether a run of this study is active."""
-    return is_locked(work.run_lock)

@@ -53,7 +53,8 @@ def explain(text: str, decimal: str) -> tuple[str, str]:
     if text.lstrip("+-").lower() in _INFINITE:
         return "infinite value", f"{shown} is infinite; a finite number is expected"
     if _PLAIN[decimal].fullmatch(text):
-        return "range of numbers", f"{shown} is beyond the sizes fitlib computes with (1e-60 to 1e60, and 0); choose another unit"
+        allowed = f"0, or {SMALLEST:g} to {LARGEST:g} in size"
+        return "range of numbers", f"{shown} is beyond the sizes fitlib computes with ({allowed}); choose another unit"
     return _explain_writing(shown, text, decimal)
 
 

@@ -66,9 +66,8 @@ def _file_changes(old: Mapping[str, str], new: Mapping[str, str]) -> list[str]:
 
 
 def _setting_changes(old: DatasetPlan, new: DatasetPlan) -> list[str]:
-    """The settings of all steps together; a changed list of files is told by the files already."""
-    before = {group: value for used in old.settings.values() for group, value in used.items()}
-    after = {group: value for used in new.settings.values() for group, value in used.items()}
+    """A changed list of files is told by the files already."""
+    before, after = old.settings, new.settings
     groups = [group for group in {**after, **before} if before.get(group) != after.get(group) and group != "files"]
     if any(group.startswith("validation ") for group in groups):
         groups = [group for group in groups if group != "validation"]  # the schemes by name say more

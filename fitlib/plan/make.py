@@ -102,7 +102,7 @@ def plan_dataset(study, dataset, batches: int, numerics: str, versions: dict[str
         file_name=dataset.file_name,
         batch=batch_of(dataset.id, batches),
         files=files,
-        settings=settings,
+        settings={group: value[:16] for used in settings.values() for group, value in used.items()},
         steps=step_fingerprints(dataset.id, files, settings, numerics, versions),
     )
 

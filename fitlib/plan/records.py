@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import asdict, dataclass
+from functools import cached_property
 from typing import Any
 
 from fitlib.errors import FitlibError
@@ -25,8 +26,8 @@ class DatasetPlan:
         The batch that it belongs to.
     files : dict of str to str
         SHA-256 of the raw bytes of each data file, by its name relative to the study.
-    settings : dict of str to dict of str to str
-        For each step, the digest of each group of settings that the step uses (not of the data, not of the code).
+    settings : dict of str to str
+        The beginning of the digest of each group of settings that the dataset uses: enough to tell what has changed.
     steps : dict of str to str
         For each step in order, its fingerprint: equal fingerprints promise equal results. The last is ``result``.
     """
@@ -35,7 +36,7 @@ class DatasetPlan:
     file_name: str
     batch: str
     files: Mapping[str, str]
-    settings: Mapping[str, Mapping[str, str]]
+    settings: Mapping[str, str]
     steps: Mapping[str, str]
 
     @property
@@ -108,10 +109,11 @@ class Plan:
         KeyError
             The plan has no such dataset.
         """
-        for each in self.datasets:
-            if each.id == dataset_id:
-                return each
-        raise KeyError(dataset_id)
+        return self._by_id[dataset_id]
+
+    @cached_property
+    def _by_id(self) -> dict[str, DatasetPlan]:
+        return {each.id: each for each in self.datasets}
 
     def batch(self, name: str) -> Batch:
         """Return one batch.

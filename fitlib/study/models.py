@@ -22,8 +22,8 @@ from fitlib.study.kinds import (
     choice,
     line_text,
     not_allowed,
-    paragraph,
     not_negative,
+    paragraph,
     positive,
     whole,
 )

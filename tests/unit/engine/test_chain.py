@@ -226,6 +226,28 @@ def test_data_that_change_while_a_batch_runs_are_not_accepted(bench, monkeypatch
     assert not output.exists()
 
 
+@pytest.mark.parametrize(
+    ("old", "new"), [("title: Trial", "title: Another"), ("  - {id: cell-2, files: [cell-2.csv]}\n", "")]
+)
+def test_a_study_that_changes_before_it_is_published_is_not_published(bench, old, new):
+    plan, plan_file = bench.plan_file()
+    bench.run_batches(plan, plan_file)
+    bench.edit("study.yaml", old, new)
+    with pytest.raises(FitlibError, match="changed while the run was going on: run again"):
+        run_publish(plan_file, bench.work.marker(plan.digest))
+    assert latest_revision(bench.results, "trial") is None
+
+
+def test_files_of_other_plans_are_removed_when_a_plan_is_published(done):
+    old = done.plan()
+    done.edit("study.yaml", "draws: 20", "draws: 30")
+    done.run()
+    new = done.plan()
+    assert [path.name for path in done.work.published.iterdir()] == [f"{new.digest[:16]}.json"]
+    assert not done.work.plan_file(old.digest).exists()
+    assert {path.name for path in done.work.batches.iterdir()} == {batch.file_name for batch in new.batches}
+
+
 def test_a_program_that_changed_since_it_planned_is_refused(bench, monkeypatch):
     plan, plan_file = bench.plan_file(batches=1)
     monkeypatch.setattr(batch, "code_identity", lambda cache: CodeIdentity("other", "d" * 64, "r" * 64))

@@ -1,6 +1,7 @@
 """Before Snakemake starts: the check, the command line, what a dry run tells."""
 
 import io
+import os
 
 import pytest
 
@@ -53,6 +54,12 @@ def test_faults_in_study_or_data_stop_before_anything_is_written(bench, no_workf
     assert {"cell-1.csv", "cell-2.csv"} <= {problem.file.split("/")[-1] for problem in refused.value.problems}
     assert no_workflow == []
     assert not bench.results.exists()
+
+
+def test_a_study_that_can_be_read_only_once_is_refused(bench, no_workflow):
+    os.mkfifo(bench.root / "pipe.yaml")
+    with pytest.raises(InputError, match=r"pipe\.yaml: is not a regular file"):
+        run_study(bench.root / "pipe.yaml", bench.results)
 
 
 def test_a_second_run_is_told_of_the_first(done, no_workflow):
@@ -156,6 +163,13 @@ def test_the_snakefile_tells_faults_of_the_study_and_of_its_data(bench, capsys, 
     status, said = stopped(capsys, {}, ["study.yaml"])
     assert (status, said) == (2, "study.yaml:15: wieghting: unknown key; did you mean 'weighting'?\n")
     assert not bench.results.exists()
+
+
+def test_the_snakefile_refuses_another_plan_than_the_one_that_was_checked(bench, capsys):
+    config = {"study_file": str(bench.root / "study.yaml"), "results_dir": str(bench.results), "checked_plan": "0" * 64}
+    status, said = stopped(capsys, config)
+    assert status == 1
+    assert "changed while the run was going on: run again" in said
 
 
 @pytest.mark.parametrize("batches", [0, "four", 2.5, True])

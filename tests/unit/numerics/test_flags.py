@@ -44,7 +44,7 @@ def test_false_alarms_are_as_rare_as_said():
 
 def test_no_studentized_residual_where_an_observation_determines_its_own_fit():
     leverage = np.array([1.0, 1 / 3, 1 / 3, 1 / 3])
-    value = studentized_residuals(np.array([0.0, 1.0, -2.0, 1.0]), np.ones(4), leverage, 2)
+    value = studentized_residuals(np.array([0.0, 1.0, -1.5, 0.5]), np.ones(4), leverage, 2)
     assert np.isnan(value).tolist() == [True, False, False, False]
     assert np.isnan(studentized_residuals(np.zeros(3), np.ones(3), np.full(3, 2 / 3), 2)).all()
     assert not suspects(np.full(3, 99.0), 2).any()

@@ -162,7 +162,7 @@ def test_a_criterion_without_degrees_of_freedom_cannot_win():
 
 
 def test_backward_elimination():
-    """F = (4 - 1) / (1 / 9) = 27 on 1 and 9 is significant, (1 - 0.98) / (0.98 / 8) on 1 and 8 for the last term is not."""
+    """F = (4 - 1) / (1 / 9) = 27 on 1 and 9 counts; (1 - 0.98) / (0.98 / 8) of the last term does not."""
     evidence = _evidence(np.full((4, 12), np.nan), squares=[4.2, 4.0, 1.0, 0.98])
     assert f_probability(evidence, 1, 2) == pytest.approx(stats.f.sf(27, 1, 9), rel=1e-10)
     choice = choose(evidence, "f_test", _all(evidence), 0.05)
