@@ -279,7 +279,8 @@ def _components(chosen: dict, rows: dict, dataset) -> dict:
     for name in names:
         value = parts[name]
         result[f"{name}_evaluated"] = None if value is None or not slope > 0 else value / slope
-    return result | {"level_deviation_found": parts["level_deviation_found"]}
+    found = ("level_deviation_found", "series_deviation_found")
+    return result | {name: parts[name] for name in found}
 
 
 def _verification(rows: dict, chosen: dict | None, dataset) -> list[dict]:

@@ -9,6 +9,7 @@ from fitlib.analysis.dataset import DatasetArrays
 from fitlib.analysis.evaluated import in_evaluated_unit
 from fitlib.analysis.jsonable import matrix, number, numbers
 from fitlib.analysis.schemes import level_losses
+from fitlib.analysis.spread import Spread, find_spread
 from fitlib.numerics.components import (
     Components,
     LackOfFit,
@@ -19,11 +20,8 @@ from fitlib.numerics.components import (
 )
 from fitlib.numerics.diagnostics import excursion, information_criteria, is_monotone, serial_correlation
 from fitlib.numerics.powers import power_form
-from fitlib.numerics.uncertainty import coefficient_covariance
 from fitlib.numerics.validation import standard_error
 
-#: Probability below which lack of fit is called significant (common practice, no source).
-SIGNIFICANT = 0.05
 #: Losses below (this * epsilon * largest |y|)^2 are rounding.
 FLOOR_IN_EPSILON = 64
 
@@ -90,11 +88,8 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
     lack = lack_of_fit(fit.residual, data.root_weights, data.level_index, item.parameters)
     parts = variance_components(fit.residual, design, data.root_weights, data.level_index, data.series_index)
     exact = is_exact(fit.residual_sum_of_squares, data)
-    found = bool(not exact and lack is not None and lack.p < SIGNIFICANT and parts.level_deviation > 0)
-    spread = _spread(fit, parts, item, data, found)
-    covariance = coefficient_covariance(
-        design, data.root_weights, fit.inverse_normal, data.level_index, spread["variance"], spread["level_variance"]
-    )
+    spread = find_spread(fit, design, parts, lack, data, exact)
+    covariance = spread.covariance
     power = power_form(curve, covariance, *data.x_interval)
     return (
         _heading(item, data)
@@ -103,12 +98,12 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
         | _shape(curve, fit, data)
         | _misfit(curve, fit, design, data, dataset, lack, gain)
         | {
-            "components": _components(parts, found),
+            "components": _components(parts, spread),
             "covariance": matrix(covariance),
-            "covariance_degrees_of_freedom": float(spread["degrees_of_freedom"]),
-            "observation_variance": number(spread["variance"] + spread["level_variance"]),
-            "reading_standard_deviation": number(spread["reading"]),
-            "level_standard_deviation": number(spread["not_divided"]),
+            "covariance_degrees_of_freedom": number(spread.degrees_of_freedom),
+            "observation_variance": number(spread.reading**2 + spread.not_divided**2),
+            "reading_standard_deviation": number(spread.reading),
+            "level_standard_deviation": number(spread.not_divided),
             "terms": [
                 {"term": f"x^{k}", "estimate": number(estimate), "standard_uncertainty": number(uncertainty)}
                 for k, (estimate, uncertainty) in enumerate(
@@ -148,24 +143,6 @@ def loss_floor(data: DatasetArrays) -> float:
     float
     """
     return float((FLOOR_IN_EPSILON * np.finfo(float).eps * np.max(np.abs(data.y))) ** 2)
-
-
-def _spread(fit, parts: Components, item: Declared, data: DatasetArrays, found: bool) -> dict:
-    """Variances that the bands and the covariance are made of, each entered once (design rule on level deviations)."""
-    free = data.rows.size - item.parameters
-    residual_variance = fit.residual_sum_of_squares / free if free > 0 else np.nan
-    variance = parts.pure_error**2 if found else residual_variance
-    level_variance = parts.level_deviation**2 if found else 0.0
-    series_variance = np.nan_to_num(parts.series_deviation) ** 2
-    repeat = parts.repeatability**2 if np.isfinite(parts.repeatability) else variance
-    return {
-        "variance": variance,
-        "level_variance": level_variance,
-        "degrees_of_freedom": data.levels.size - item.parameters if found else free,
-        "reading": np.sqrt(repeat),
-        # What averaging readings does not divide: the rest of one observation's variance
-        "not_divided": np.sqrt(level_variance + max(series_variance, variance - repeat, 0.0)),
-    }
 
 
 def _sizes(fit, item: Declared, data: DatasetArrays) -> dict:
@@ -238,13 +215,14 @@ def _misfit(curve, fit, design, data: DatasetArrays, dataset, lack: LackOfFit | 
     }
 
 
-def _components(parts: Components, found: bool) -> dict:
+def _components(parts: Components, spread: Spread) -> dict:
     return {
         "repeatability": number(parts.repeatability),
         "series_deviation": number(parts.series_deviation),
         "pure_error": number(parts.pure_error),
         "level_deviation": number(parts.level_deviation),
-        "level_deviation_found": found,
+        "level_deviation_found": spread.level_variance > 0,
+        "series_deviation_found": spread.series_variance > 0,
     }
 
 

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from fitlib.analysis.fits import SIGNIFICANT
 from fitlib.analysis.words import amount, figure, listed, probability
+from fitlib.numerics.components import SIGNIFICANT
 
 #: Fewer levels than this cannot show a smooth misfit.
 FEWEST_LEVELS = 7

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
-from fitlib.analysis.fits import SIGNIFICANT
 from fitlib.analysis.judgement import lack_of_fit_words
 from fitlib.analysis.words import figure, listed
+from fitlib.numerics.components import SIGNIFICANT
 from fitlib.numerics.selection import Choice
 
 

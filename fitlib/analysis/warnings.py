@@ -33,6 +33,7 @@ def collect_warnings(result: dict, study, dataset, observations) -> list[str]:
         warnings += _exact(chosen)
         warnings += _suspects(result)
         warnings += _levels(result, chosen)
+        warnings += _series(result)
         warnings += _shape(result, chosen)
         warnings += _rivals(result, chosen)
     return warnings
@@ -92,6 +93,18 @@ def _levels(result: dict, chosen: dict) -> list[str]:
         text += f", or {amount(parts['level_deviation_evaluated'], result['settings']['evaluated']['unit'], 2)}"
     text += f", against a scatter within levels of {amount(parts['pure_error'], unit, 2)}"
     return [text + "; it is not explained by the replicates and enters the uncertainty"]
+
+
+def _series(result: dict) -> list[str]:
+    parts = result["selection"]["components"]
+    if not parts["series_deviation_found"]:
+        return []
+    unit = result["settings"]["fitted"]["unit"]
+    text = f"whole series differ: standard deviation of a series {amount(parts['series_deviation'], unit, 2)}"
+    if parts["series_deviation_evaluated"] is not None and unit != result["settings"]["evaluated"]["unit"]:
+        text += f", or {amount(parts['series_deviation_evaluated'], result['settings']['evaluated']['unit'], 2)}"
+    count = result["design"]["series"]
+    return [f"{text}, from {count} series; it enters the uncertainty and does not shrink with more levels"]
 
 
 def _shape(result: dict, chosen: dict) -> list[str]:

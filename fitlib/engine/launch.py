@@ -21,7 +21,7 @@ from fitlib.engine.process import Ended, run_child
 from fitlib.engine.progress import Events, Progress
 from fitlib.engine.store import Store
 from fitlib.engine.summary import DryRun, RunSummary, SummaryRow
-from fitlib.engine.workflow import ANOTHER_RUN, CHANGED, require_sound_data
+from fitlib.engine.workflow import ANOTHER_RUN, CHANGED, checked_mark, require_sound_data
 from fitlib.errors import FitlibError, InputError, Problem
 from fitlib.plan import BATCHES, Plan, describe_changes, workflow_folder
 
@@ -184,7 +184,7 @@ def _command(request: _Request, cores: int | None, profile: str | None) -> list[
         *("--cores", str(cores or _all_cores()), "--nocolor"),
         *("--config", f"study_file={request.study_file.as_uri()}"),
         *(f"results_dir={request.work.results_dir.as_uri()}", f"batches={request.batches}"),
-        f"checked_plan={request.plan.digest}",
+        f"checked_plan={checked_mark(request.plan)}",
     ]
 
 

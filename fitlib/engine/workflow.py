@@ -119,11 +119,16 @@ def _prepare(config: Mapping[str, Any], config_files: Sequence[Path]) -> Workflo
     return WorkflowRun(plan, work)
 
 
+def checked_mark(plan: Plan) -> str:
+    """Return the text that names a plan to Snakemake; it cannot be read as a number."""
+    return f"plan-{plan.digest}"
+
+
 def _require_checked(study, plan: Plan, checked_plan: str | None) -> None:
     """``fitlib run`` has checked the data before, and says which plan that was."""
     if checked_plan is None:
         require_sound_data(study)
-    elif checked_plan != plan.digest:
+    elif checked_plan != checked_mark(plan):
         raise FitlibError(CHANGED)
 
 

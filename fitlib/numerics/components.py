@@ -7,6 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import stats
 
+#: Probability below which a component is called found (common practice, no source).
+SIGNIFICANT = 0.05
+
 
 @dataclass(frozen=True)
 class LackOfFit:
@@ -37,7 +40,7 @@ class Components:
     repeatability : float
         Within a level and series.
     series_deviation : float
-        Between series at a level.
+        What a series carries on its own, shared by all its levels.
     pure_error : float
         Within a level over all series.
     level_deviation : float
@@ -48,6 +51,61 @@ class Components:
     series_deviation: float
     pure_error: float
     level_deviation: float
+
+
+@dataclass(frozen=True)
+class SeriesEffect:
+    """Whether whole series differ, from the scatter within levels.
+
+    Attributes
+    ----------
+    f, p : float
+        Ratio of the mean square of series to the rest, and its upper tail probability.
+    numerator_df, denominator_df : int
+    deviation : float
+        Standard deviation of a series; 0 when its mean square is below the rest.
+    rest_variance : float
+        Variance within levels when the means of the series are taken out.
+    """
+
+    f: float
+    p: float
+    numerator_df: int
+    denominator_df: int
+    deviation: float
+    rest_variance: float
+
+
+def series_effect(residual: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray, series_index: np.ndarray):
+    """Main effect of series over levels (two-way analysis of variance, Scheffé, The Analysis of Variance, 1959, ch. 4).
+
+    Exact where every series visits every level equally often; otherwise an approximation.
+
+    Parameters
+    ----------
+    residual : ndarray of shape (n,)
+    root_weights : ndarray of shape (n,)
+    level_index, series_index : ndarray of shape (n,), int
+
+    Returns
+    -------
+    SeriesEffect or None
+        None with one series or no degree of freedom left.
+    """
+    means, _ = level_residuals(residual, root_weights, level_index)
+    within = residual - means[level_index]
+    series_means, weights = level_residuals(within, root_weights, series_index)
+    count, n = series_means.size, residual.size
+    left = n - means.size - (count - 1)
+    if count < 2 or left < 1:
+        return None
+    rest = float(np.sum((root_weights * (within - series_means[series_index])) ** 2)) / left
+    between = float(np.sum(weights * series_means**2)) / (count - 1)
+    sizes = np.bincount(series_index)
+    number = (n - np.sum(sizes**2) / n) / (count - 1)
+    f = between / rest if rest > 0 else (np.inf if between > 0 else 0.0)
+    p = float(stats.f.sf(f, count - 1, left))
+    return SeriesEffect(f, p, count - 1, left, float(np.sqrt(max(0.0, (between - rest) / number))), rest)
 
 
 def lack_of_fit(residual: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray, parameters: int):
@@ -135,33 +193,45 @@ def variance_components(
     repeat, repeat_df = _within(residual, root_weights, cells)
     pure_variance = pure / pure_df if pure_df else np.nan
     repeat_variance = repeat / repeat_df if repeat_df else np.nan
-    series_variance = _between_series(pure, repeat, pure_df, repeat_df, root_weights, level_index, cells)
-    level_variance = np.nan
+    effect = series_effect(residual, root_weights, level_index, series_index)
+    within = pure_variance if effect is None or not effect.p < SIGNIFICANT else effect.rest_variance
+    level_variance = level_variance_component(residual, design, root_weights, level_index, within)
+    series_deviation = np.nan if effect is None else effect.deviation
+    repeatability, pure_error, level_deviation = np.sqrt([repeat_variance, pure_variance, level_variance]).tolist()
+    return Components(repeatability, float(series_deviation), pure_error, level_deviation)
+
+
+def level_variance_component(
+    residual: np.ndarray, design: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray, within_variance: float
+) -> float:
+    """Variance of what a level carries on its own, from the excess of level residuals over the scatter within.
+
+    ``E[sum W m^2] = level_variance * tr(M N) + within_variance * (L - p)``, with ``M`` the projector on what the
+    candidate cannot describe and ``N`` the numbers of observations (at weight 1 a level's deviation is common to them).
+
+    Parameters
+    ----------
+    residual : ndarray of shape (n,)
+    design : ndarray of shape (n, p)
+    root_weights : ndarray of shape (n,)
+    level_index : ndarray of shape (n,), int
+    within_variance : float
+        nan without replicates.
+
+    Returns
+    -------
+    float
+        nan where the design does not show it.
+    """
     basis, weights = level_space(design, root_weights, level_index)
     spare = weights.size - design.shape[1]
-    if pure_df and spare > 0:
-        means, _ = level_residuals(residual, root_weights, level_index)
-        # E[sum W m^2] = level_variance * tr(M N) + pure_variance * (L - p), with M = I - basis basis^T and N the
-        # numbers of observations: at weight 1 a level's deviation is common to its observations
-        excess = np.sum(weights * means**2) - pure_variance * spare
-        counts = np.bincount(level_index)
-        level_variance = max(0.0, excess / np.sum((1 - np.sum(basis**2, axis=1)) * counts))
-    return Components(*(float(np.sqrt(v)) for v in (repeat_variance, series_variance, pure_variance, level_variance)))
+    if spare < 1 or not np.isfinite(within_variance):
+        return np.nan
+    means, _ = level_residuals(residual, root_weights, level_index)
+    excess = float(np.sum(weights * means**2) - within_variance * spare)
+    return max(0.0, excess / float(np.sum((1 - np.sum(basis**2, axis=1)) * np.bincount(level_index))))
 
 
 def _within(residual: np.ndarray, root_weights: np.ndarray, groups: np.ndarray) -> tuple[float, int]:
     means, _ = level_residuals(residual, root_weights, groups)
     return float(np.sum((root_weights * (residual - means[groups])) ** 2)), residual.size - means.size
-
-
-def _between_series(pure, repeat, pure_df, repeat_df, root_weights, level_index, cells) -> float:
-    """Variance between series at a level, where both cells with replicates and levels with several cells exist."""
-    if not repeat_df or pure_df == repeat_df:
-        return np.nan
-    cell_weights = np.bincount(cells, root_weights**2)
-    level_of_cell = np.zeros(cell_weights.size, dtype=int)
-    level_of_cell[cells] = level_index
-    totals = np.bincount(level_of_cell, cell_weights)
-    squares = np.bincount(level_of_cell, cell_weights**2)
-    factor = np.sum(totals - squares / totals)
-    return max(0.0, (pure - repeat - (pure_df - repeat_df) * repeat / repeat_df) / factor)

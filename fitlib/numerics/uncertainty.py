@@ -26,12 +26,14 @@ def coefficient_covariance(
     level_index: np.ndarray,
     reading_variance: float,
     level_variance: float,
+    series_index: np.ndarray | None = None,
+    series_variance: float = 0.0,
 ) -> np.ndarray:
-    """Covariance of least-squares coefficients when levels carry their own deviation.
+    """Covariance of least-squares coefficients when levels or series carry their own deviation.
 
-    ``(A^T A)^-1 A^T V A (A^T A)^-1`` with ``V = reading_variance * I + level_variance * Z Z^T`` in the weighted scale
+    ``(A^T A)^-1 A^T V A (A^T A)^-1`` with ``V = reading_variance I + level_variance Z Z^T + series_variance S S^T`` in the weighted scale, ``Z`` and ``S`` telling which observations share a level and a series
     (Searle, Casella & McCulloch, Variance Components, 1992, sec. 3.2; for balanced data the same as the covariance from
-    level means). With ``level_variance = 0`` it is ``reading_variance * (A^T A)^-1``.
+    level means). With no other variance it is ``reading_variance * (A^T A)^-1``.
 
     Parameters
     ----------
@@ -41,19 +43,40 @@ def coefficient_covariance(
         ``(A^T A)^-1``.
     level_index : ndarray of shape (n,), int
     reading_variance, level_variance : float
-        At weight 1; both grow with the spread that the weighting declares.
+        At weight 1; all grow with the spread that the weighting declares.
+    series_index : ndarray of shape (n,), int, or None
+        Needed with a series variance.
+    series_variance : float
 
     Returns
     -------
     ndarray of shape (p, p)
     """
     covariance = reading_variance * inverse_normal
-    if level_variance > 0:
-        weighted = design * root_weights[:, None]
-        sums = np.stack([np.bincount(level_index, column) for column in weighted.T], axis=1)
-        part = inverse_normal @ sums.T
-        covariance = covariance + level_variance * part @ part.T
+    weighted = design * root_weights[:, None]
+    for index, variance in ((level_index, level_variance), (series_index, series_variance)):
+        if variance > 0:
+            sums = np.stack([np.bincount(index, column) for column in weighted.T], axis=1)
+            part = inverse_normal @ sums.T
+            covariance = covariance + variance * part @ part.T
     return covariance
+
+
+def effective_degrees_of_freedom(variances: np.ndarray, degrees_of_freedom: np.ndarray) -> float:
+    """Welch–Satterthwaite formula (JCGM 100:2008, eq. G.2b).
+
+    Parameters
+    ----------
+    variances : ndarray of shape (k,)
+        Contributions to one variance.
+    degrees_of_freedom : ndarray of shape (k,)
+
+    Returns
+    -------
+    float
+    """
+    variances = np.asarray(variances, dtype=float)
+    return float(variances.sum() ** 2 / np.sum(variances**2 / np.asarray(degrees_of_freedom, dtype=float)))
 
 
 def mean_standard_uncertainty(curve: Curve, covariance: np.ndarray, x: np.ndarray) -> np.ndarray:

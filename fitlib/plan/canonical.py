@@ -59,5 +59,16 @@ def canonical(value: Any) -> str:
 
 
 def digest(value: Any) -> str:
-    """Return the SHA-256 of the canonical text of a value, 64 hexadecimal digits."""
+    """Return the SHA-256 of the canonical text of a value.
+
+    Parameters
+    ----------
+    value : Any
+        As :func:`canonical` takes it.
+
+    Returns
+    -------
+    str
+        64 hexadecimal digits.
+    """
     return hashlib.sha256(canonical(value).encode("ascii")).hexdigest()

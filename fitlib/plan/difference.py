@@ -7,6 +7,7 @@ from collections.abc import Iterable, Mapping
 from fitlib.plan.records import DatasetPlan, Plan
 
 SHOWN = 5  # names in one sentence; the rest is counted
+LINES = 10  # sentences about datasets; the rest is counted
 
 
 def describe_changes(before: Plan | None, after: Plan) -> list[str]:
@@ -51,12 +52,15 @@ def _program_changes(before: Plan, after: Plan) -> list[str]:
 
 
 def _dataset_changes(pairs: Iterable[tuple[DatasetPlan, DatasetPlan]]) -> list[str]:
-    """Datasets with the same cause share a sentence: a changed family is one cause, not one for each dataset."""
+    """Datasets with the same causes share a sentence: a changed family is one cause, not one for each dataset."""
     causes: dict[str, list[str]] = {}
     for old, new in pairs:
-        for cause in (*_file_changes(old.files, new.files), *_setting_changes(old, new)):
-            causes.setdefault(cause, []).append(new.id)
-    return [line for cause, names in causes.items() for line in _named(cause, names)]
+        found = [*_file_changes(old.files, new.files), *_setting_changes(old, new)]
+        if found:
+            causes.setdefault("; ".join(found), []).append(new.id)
+    lines = [line for cause, names in causes.items() for line in _named(cause, names)]
+    rest = [f"and {len(lines) - LINES} more changes of this kind"] if len(lines) > LINES else []
+    return [*lines[:LINES], *rest]
 
 
 def _file_changes(old: Mapping[str, str], new: Mapping[str, str]) -> list[str]:
@@ -71,7 +75,7 @@ def _setting_changes(old: DatasetPlan, new: DatasetPlan) -> list[str]:
     groups = [group for group in {**after, **before} if before.get(group) != after.get(group) and group != "files"]
     if any(group.startswith("validation ") for group in groups):
         groups = [group for group in groups if group != "validation"]  # the schemes by name say more
-    return [f"{group.replace('_', ' ')} changed" for group in groups]
+    return [f"{', '.join(group.replace('_', ' ') for group in groups)} changed"] if groups else []
 
 
 def _named(cause: str, names: Iterable[str]) -> list[str]:

@@ -64,13 +64,32 @@ def hash_files(study, dataset) -> dict[str, str]:
 
 
 def hash_file(path: Path) -> str:
-    """Return the SHA-256 of a file's bytes."""
+    """Return the SHA-256 of a file's bytes.
+
+    Parameters
+    ----------
+    path : Path
+
+    Returns
+    -------
+    str
+        64 hexadecimal digits.
+    """
     with open(path, "rb") as stream:
         return hashlib.file_digest(stream, "sha256").hexdigest()
 
 
 def step_names(study) -> tuple[str, ...]:
-    """Return the steps of a dataset in order, the assembled result last."""
+    """Return the steps of a dataset in order, the assembled result last.
+
+    Parameters
+    ----------
+    study : Study
+
+    Returns
+    -------
+    tuple of str
+    """
     return ("fits", *(f"scheme:{scheme.id}" for scheme in study.validation), "selection", "result")
 
 

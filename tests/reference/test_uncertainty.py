@@ -5,11 +5,13 @@ import pandas as pd
 import pytest
 import statsmodels.api as sm
 from scipy import stats
+from statsmodels.formula.api import ols
 
-from fitlib.numerics.components import level_residuals, variance_components
+from fitlib.numerics.components import level_residuals, series_effect, variance_components
 from fitlib.numerics.uncertainty import (
     coefficient_covariance,
     confidence_band,
+    effective_degrees_of_freedom,
     mean_standard_uncertainty,
     prediction_interval,
     reading_uncertainty,
@@ -73,37 +75,51 @@ def test_band_and_interval(degree, probability, fit_polynomial, agrees):
     agrees(mean_standard_uncertainty(result.curve, result.covariance, grid), frame["mean_se"], 8)
 
 
-def _balanced(levels=9, series=4, readings=3, seed=12):
-    """A line with a level deviation, a deviation of each series at a level, and repeatability."""
+def _balanced(offset, levels=9, series=4, readings=3, seed=12):
+    """A line with a level deviation, an offset of each series over all levels, and repeatability."""
     rng = np.random.default_rng(seed)
     level = np.repeat(np.arange(levels), series * readings)
     run = np.tile(np.repeat(np.arange(series), readings), levels)
     x = np.linspace(0, 8, levels)[level]
-    y = 1 + 0.5 * x + rng.normal(0, 0.05, levels)[level] + rng.normal(0, 0.02, (levels, series))[level, run]
+    y = 1 + 0.5 * x + rng.normal(0, 0.05, levels)[level] + rng.normal(0, offset, series)[run]
     return x, y + rng.normal(0, 0.01, x.size), level, run
 
 
-def test_components_by_the_classical_analysis(fit_polynomial, agrees):
-    """Balanced data: mean squares between cells and within cells, from plain group means."""
-    x, y, level, run = _balanced()
+@pytest.mark.parametrize("offset, found", [(0.03, True), (0.0, False)])
+def test_components_by_the_classical_analysis(offset, found, fit_polynomial, agrees):
+    """Balanced data: mean squares of levels, series, cells and the rest, from plain group means."""
+    x, y, level, run = _balanced(offset)
     result = fit_polynomial(x, y, 1)
     parts = variance_components(result.fit.residual, result.design, np.ones(x.size), level, run)
     cells = y.reshape(9, 4, 3)
-    within_cell = cells.var(axis=2, ddof=1).mean()
-    between_cells = 3 * cells.mean(axis=2).var(axis=1, ddof=1).mean()
     pure = cells.reshape(9, 12).var(axis=1, ddof=1).mean()
+    of_series = 27 * cells.mean(axis=(0, 2)).var(ddof=1)
+    rest = (99 * pure - 3 * of_series) / 96
     means = cells.mean(axis=(1, 2))
     coefficients = np.polyfit(np.linspace(0, 8, 9), means, 1)
     about_line = 12 * np.sum((means - np.polyval(coefficients, np.linspace(0, 8, 9))) ** 2) / 7
-    agrees(parts.repeatability, np.sqrt(within_cell), 9)
-    agrees(parts.series_deviation, np.sqrt((between_cells - within_cell) / 3), 9)
+    agrees(parts.repeatability, np.sqrt(cells.var(axis=2, ddof=1).mean()), 9)
     agrees(parts.pure_error, np.sqrt(pure), 9)
-    agrees(parts.level_deviation, np.sqrt((about_line - pure) / 12), 9)
+    agrees(parts.series_deviation, np.sqrt(max(0.0, of_series - rest) / 27), 9)
+    agrees(parts.level_deviation, np.sqrt((about_line - (rest if found else pure)) / 12), 9)
+    effect = series_effect(result.fit.residual, np.ones(x.size), level, run)
+    assert (effect.p < 0.05) == found
+
+
+@pytest.mark.parametrize("offset", [0.0, 0.03])
+def test_whole_series_by_a_two_way_analysis_of_variance(offset, fit_polynomial, agrees):
+    """statsmodels: the main effect of series beside levels, both as categories."""
+    x, y, level, run = _balanced(offset, seed=5)
+    effect = series_effect(fit_polynomial(x, y, 2).fit.residual, np.ones(x.size), level, run)
+    table = sm.stats.anova_lm(ols("y ~ C(level) + C(run)", pd.DataFrame({"y": y, "level": level, "run": run})).fit())
+    agrees([effect.f, effect.p], table.loc["C(run)", ["F", "PR(>F)"]], 8)
+    agrees(effect.rest_variance, table.loc["Residual", "mean_sq"], 9)
+    assert (effect.numerator_df, effect.denominator_df) == tuple(table["df"].iloc[1:])
 
 
 def test_level_deviation_by_a_mixed_model(fit_polynomial, agrees):
     """statsmodels MixedLM by restricted maximum likelihood, which equals the moments on balanced data."""
-    x, y, level, run = _balanced()
+    x, y, level, run = _balanced(0.0)
     result = fit_polynomial(x, y, 2)
     parts = variance_components(result.fit.residual, result.design, np.ones(x.size), level, run)
     frame = pd.DataFrame({"y": 100 * y, "x": x, "level": level})
@@ -128,7 +144,7 @@ def test_level_deviation_by_a_mixed_model(fit_polynomial, agrees):
 
 def test_covariance_of_balanced_data_is_that_of_level_means(fit_polynomial, agrees):
     """With moments of the same model: a plain fit of the level means and its own residual variance."""
-    x, y, level, run = _balanced(seed=4)
+    x, y, level, run = _balanced(0.0, seed=4)
     result = fit_polynomial(x, y, 2)
     parts = variance_components(result.fit.residual, result.design, np.ones(x.size), level, run)
     assert parts.level_deviation > 0
@@ -143,18 +159,25 @@ def test_covariance_of_balanced_data_is_that_of_level_means(fit_polynomial, agre
 
 @pytest.mark.parametrize("weighting", [0.0, 0.5, 1.0])
 def test_covariance_by_the_general_formula(weighting, fit_polynomial, agrees):
-    """Uneven data with weights against (X'WX)^-1 X'W V W X (X'WX)^-1 written out, a level's deviation growing too."""
+    """Uneven data with weights against (X'WX)^-1 X'W V W X (X'WX)^-1 written out; deviations grow like the scatter."""
     rng = np.random.default_rng(2)
     level = np.repeat(np.arange(7), [1, 4, 2, 3, 5, 1, 2])
     x = np.linspace(1, 8, 7)[level] + rng.normal(0, 1e-3, level.size)
     root = x**-weighting
     result = fit_polynomial(x, x + rng.normal(0, 0.1, x.size), 2, root_weights=root)
-    actual = coefficient_covariance(result.design, root, result.fit.inverse_normal, level, 0.3, 0.7)
-    same = level[:, None] == level[None, :]
-    spread = np.diag(0.3 / root**2) + 0.7 * same / np.outer(root, root)
-    normal = np.linalg.inv(result.design.T @ np.diag(root**2) @ result.design)
-    sandwich = normal @ result.design.T @ np.diag(root**2) @ spread @ np.diag(root**2) @ result.design @ normal
-    agrees(actual, sandwich, 7)
+    run = rng.integers(0, 3, level.size)
+    common = (result.design, root, result.fit.inverse_normal, level, 0.3, 0.7)
+    same, series = (index[:, None] == index[None, :] for index in (level, run))
+    half = np.linalg.inv(result.design.T @ np.diag(root**2) @ result.design) @ result.design.T @ np.diag(root**2)
+    for further, spread in (((), 0.7 * same), ((run, 0.2), 0.7 * same + 0.2 * series)):
+        whole = np.diag(0.3 / root**2) + spread / np.outer(root, root)
+        agrees(coefficient_covariance(*common, *further), half @ whole @ half.T, 7)
+
+
+def test_effective_degrees_of_freedom(agrees):
+    """JCGM 100:2008, eq. G.2b; its example in G.4.1: 0.25, 0.57, 0.82 % with 9, 4, 14 (from memory, high): 19.0."""
+    agrees(effective_degrees_of_freedom([0.25**2, 0.57**2, 0.82**2], [9, 4, 14]), 19.0, 2.3)
+    agrees(effective_degrees_of_freedom([3.0], [7]), 7.0, 12)
 
 
 def test_level_deviation_has_the_right_expectation():

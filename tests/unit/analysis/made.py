@@ -89,7 +89,7 @@ def observations(x, y, series=None, level=None, state=None) -> Observations:
     label = x if level is None else np.asarray(level, dtype=float)
     index = np.full(n, -1)
     index[state == "used"] = np.unique(label[state == "used"], return_inverse=True)[1]
-    used, excluded, kept = (int((state == name).sum()) for name in ("used", "excluded", "verification"))
+    used, excluded, kept = (int(np.sum(state == name)) for name in ("used", "excluded", "verification"))
     return Observations(
         file=("data/LC-1.csv",) * n,
         row=np.arange(2, n + 2),

@@ -346,7 +346,7 @@ def test_verification_rows_change_no_coefficient(made):
 
 def test_excluded_rows_are_shown_and_not_used(made):
     x, y, run = made.load_cell(np.random.default_rng(3))
-    state = np.array(["used"] * x.size)
+    state = np.array(["used"] * x.size, dtype=object)
     state[[4, 50]] = "excluded"
     wild = y.copy()
     wild[[4, 50]] = np.nan, 99.0

@@ -1,6 +1,7 @@
 """A plan: digests, batches, what differs from another plan."""
 
 import json
+from dataclasses import replace
 
 import pytest
 
@@ -107,6 +108,23 @@ def test_changes_are_named(folder, old, new, sentence):
     lines = describe_changes(before, folder.plan())
     assert sentence in lines
     assert "validation changed" not in " ".join(lines)
+
+
+def test_datasets_with_the_same_changes_share_a_sentence(folder):
+    before = folder.plan()
+    folder.edit("degree: 1..2", "degree: 1..3")
+    folder.edit("weighting: none", "weighting: inverse_stimulus")
+    assert describe_changes(before, folder.plan()) == ["cell-1, cell-2: families, weighting changed"]
+
+
+def test_many_different_changes_are_counted(folder):
+    before = folder.plan()
+    many = [replace(before.datasets[0], id=f"cell {number}", files={f"{number}.csv": "0"}) for number in range(30)]
+    after = [replace(each, files={name: "1" for name in each.files}) for each in many]
+    lines = describe_changes(replace(before, datasets=tuple(many)), replace(before, datasets=tuple(after)))
+    assert len(lines) == 11
+    assert lines[0] == "cell 0: 0.csv has other content"
+    assert lines[-1] == "and 20 more changes of this kind"
 
 
 def test_a_changed_file_is_named(folder):

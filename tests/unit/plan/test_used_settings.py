@@ -9,6 +9,20 @@ from fitlib.observations import read_observations
 from fitlib.plan import fingerprints, step_names
 from fitlib.study import DatasetSettings, Study, load_study
 
+RUN = "series: run}"
+VARIANTS = (
+    [
+        (RUN, f"{RUN}\n  evaluation: direct"),
+        ("rule:", "target_uncertainty: {expanded: 0.1, coverage_factor: 2}, rule:"),
+    ],
+    [(RUN, f"{RUN}\n  function: analysis\n  level_tolerance: 0.01")],
+    [("loss: leave_one_level_out, rule: one_standard_error", "rule: f_test, alpha: 0.01")],
+    [(RUN, f"{RUN}\n  measuring_interval: [1, 5]\n  verification_points: {{where: {{run: 2}}}}")],
+    [("draws: 20}", "draws: 20, unit: observation}")],
+    [("degree: 1..2}", "degree: 1..2, fixed_points: [[0, 0]]}"), ("loss: leave_one_level_out", "loss: bootstrap")],
+)
+"""Edits of the study, so that settings which are read only sometimes are read."""
+
 SHOWN = set(fingerprints.ONLY_SHOWN)
 UNITS = set(fingerprints.UNITS)
 DECISIONS = set(fingerprints.DECISIONS)
@@ -53,7 +67,11 @@ def test_the_steps_are_those_of_the_analysis(study):
     assert list(step_names(study)) == [*analysis.step_names(study), "result"]
 
 
-def test_no_step_reads_a_setting_that_its_fingerprint_leaves_out(study):
+@pytest.mark.parametrize("edits", [(), *VARIANTS])
+def test_no_step_reads_a_setting_that_its_fingerprint_leaves_out(folder, edits):
+    for old, new in edits:
+        folder.edit(old, new)
+    study = load_study(str(folder.root / "study.yaml"))
     settings = study.datasets[0]
     observations = read_observations(study, settings)
     done = {}
