@@ -13,6 +13,7 @@ from fitlib.errors import FitlibError
 from fitlib.plan import Batch, Plan
 
 LAST_LINES = 8
+NAMED = 5
 
 
 def failure(plan: Plan, work: WorkFolder, ended: Ended, events: Events, log: Path) -> FitlibError:
@@ -34,7 +35,10 @@ def failure(plan: Plan, work: WorkFolder, ended: Ended, events: Events, log: Pat
     """
     if ended.interrupted:
         return InterruptedRunError("interrupted: what was computed is kept, and the same command goes on from there")
-    said = failed_datasets(plan, work) + _failed_batches(plan, work, events)
+    if ended.status < 0:
+        said = [f"the workflow was ended from outside (signal {-ended.status})"]
+    else:
+        said = failed_datasets(plan, work) + _failed_batches(plan, work, events)
     if not said and events.stage == "publishing":
         said = last_lines(work.publish_log(plan.digest), 1)
     said = said or last_lines(log, LAST_LINES)
@@ -59,7 +63,11 @@ def _has_output(batch: Batch, work: WorkFolder) -> bool:
 
 
 def _said_by(batch: Batch, work: WorkFolder) -> list[str]:
-    return last_lines(work.batch_log(batch.file_name), 1) or [f"batch {batch.name} ended without a word"]
+    """A job that says nothing was killed, by a person or by the system when memory ran out."""
+    rest = f" and {len(batch.members) - NAMED} more" if len(batch.members) > NAMED else ""
+    members = f"{', '.join(batch.members[:NAMED])}{rest}"
+    silent = [f"batch {batch.name} ({members}): ended from outside, or out of memory"]
+    return last_lines(work.batch_log(batch.file_name), 1) or silent
 
 
 def last_lines(log: Path, number: int) -> list[str]:

@@ -144,7 +144,7 @@ def test_level_deviation_by_a_mixed_model(fit_polynomial, agrees):
 
 def test_covariance_of_balanced_data_is_that_of_level_means(fit_polynomial, agrees):
     """With moments of the same model: a plain fit of the level means and its own residual variance."""
-    x, y, level, run = _balanced(0.0, seed=4)
+    x, y, level, run = _balanced(0.0)
     result = fit_polynomial(x, y, 2)
     parts = variance_components(result.fit.residual, result.design, np.ones(x.size), level, run)
     assert parts.level_deviation > 0
@@ -180,18 +180,23 @@ def test_effective_degrees_of_freedom(agrees):
     agrees(effective_degrees_of_freedom([3.0], [7]), 7.0, 12)
 
 
-def test_level_deviation_has_the_right_expectation():
-    """Uneven data: the mean of many seeded estimates of the variance is the variance put in, within its own error."""
+@pytest.mark.parametrize("power", [0.0, 1.0])
+def test_level_deviation_has_the_right_expectation(power):
+    """Uneven data: the mean of many seeded estimates of the variance is the variance put in, within its own error.
+
+    With weights all deviations grow like the scatter that the weights declare.
+    """
     rng = np.random.default_rng(77)
     level = np.repeat(np.arange(8), [2, 3, 1, 4, 2, 5, 1, 3])
-    x = np.linspace(-1, 1, 8)[level]
+    x = np.linspace(1, 8, 8)[level]
+    root = x**-power
     design = np.vander(x, 3)
     run = np.zeros(x.size, dtype=int)
-    hat = design @ np.linalg.pinv(design)
+    hat = design @ np.linalg.pinv(root[:, None] * design) * root
     found = []
     for _ in range(3000):
-        y = rng.normal(0, 2.0, 8)[level] + rng.normal(0, 0.5, x.size)
-        found.append(variance_components(y - hat @ y, design, np.ones(x.size), level, run).level_deviation ** 2)
+        y = (rng.normal(0, 2.0, 8)[level] + rng.normal(0, 0.5, x.size)) / root
+        found.append(variance_components(y - hat @ y, design, root, level, run).level_deviation ** 2)
     error = np.std(found) / np.sqrt(3000)
     assert abs(np.mean(found) - 4.0) < 4 * error
     assert not abs(1.2 * np.mean(found) - 4.0) < 4 * error

@@ -139,3 +139,12 @@ def test_an_observation_in_every_draw_has_no_bootstrap_error():
 def test_loss_of_each_unit():
     losses = unit_losses(np.array([[1.0, 3.0, 10.0]]), np.array([1.0, 3.0, 1.0]), np.array([0, 0, 1]), 2)
     assert losses.tolist() == [[2.5, 10.0]]
+
+
+def test_a_draw_of_two_scattered_levels_does_not_determine_a_quadratic():
+    """The stimulus scatters within a level: six different numbers, but two levels."""
+    x = np.array([0.0, 0.01, 0.02, 1.0, 1.01, 1.02, 2.0, 2.01, 2.02])
+    level = np.repeat(np.arange(3), 3)
+    problem, parameters = _problem(x, x**2, [1, 2])
+    outcome = bootstrap_errors(problem, parameters, np.array([[2, 1, 0]]), level, level)
+    assert outcome.rank_deficient[[parameters.index(2), parameters.index(3)]].tolist() == [0, 1]
