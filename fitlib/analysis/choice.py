@@ -147,7 +147,9 @@ def evidence_for(candidates: CandidateSet, rule: Rule, stream_names: tuple = ())
         if outcome.message:
             return None
         losses = outcome.loss.levels
-    squares = np.array([_level_squares(fit, data) for fit in candidates.fit()])
+    squares = np.full(len(candidates.entries), np.nan)
+    if rule.name not in LOSS_RULES:
+        squares = np.array([_level_squares(fit, data) for fit in candidates.fit()])
     return Evidence(candidates.parameters, losses, data.level_weights, squares, loss_floor(data))
 
 

@@ -99,6 +99,7 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
         | _misfit(curve, fit, design, data, dataset, lack, gain)
         | {
             "components": _components(parts, spread),
+            "lack_of_fit_within_series": None if spread.lack_of_fit is lack else _lack_record(spread.lack_of_fit),
             "covariance": matrix(covariance),
             "covariance_degrees_of_freedom": number(spread.degrees_of_freedom),
             "observation_variance": number(spread.reading**2 + spread.not_divided**2),
@@ -198,20 +199,24 @@ def _misfit(curve, fit, design, data: DatasetArrays, dataset, lack: LackOfFit | 
     basis, _ = level_space(design, data.root_weights, data.level_index)
     serial = serial_correlation(np.sqrt(weights) * means, basis)
     return {
-        "lack_of_fit": None
-        if lack is None
-        else {
-            "f": number(lack.f),
-            "p": number(lack.p),
-            "numerator_df": lack.numerator_df,
-            "denominator_df": lack.denominator_df,
-            "sum_of_squares": number(lack.sum_of_squares),
-            "pure_error_sum_of_squares": number(lack.pure_error_sum_of_squares),
-        },
+        "lack_of_fit": _lack_record(lack),
         "misfit": number(np.max(sizes)),
         "misfit_level": number(data.levels[int(np.argmax(np.where(np.isfinite(sizes), sizes, -1)))]),
         "serial": None if serial is None else {"ratio": number(serial.ratio), "p": number(serial.p)},
         "probe_gain": number(gain),
+    }
+
+
+def _lack_record(lack: LackOfFit | None) -> dict | None:
+    if lack is None:
+        return None
+    return {
+        "f": number(lack.f),
+        "p": number(lack.p),
+        "numerator_df": lack.numerator_df,
+        "denominator_df": lack.denominator_df,
+        "sum_of_squares": number(lack.sum_of_squares),
+        "pure_error_sum_of_squares": number(lack.pure_error_sum_of_squares),
     }
 
 

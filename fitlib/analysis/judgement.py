@@ -41,10 +41,12 @@ def judge(record: dict, levels: int, replicates: bool, target: float | None, uni
         )
     if record["exact"]:
         return "adequate", "the fit leaves nothing but rounding"
-    lack = record["lack_of_fit"]
+    lack = record["lack_of_fit_within_series"] or record["lack_of_fit"]
     significant = lack is not None and lack["p"] < SIGNIFICANT
     smooth = _smooth_signs(record)
-    against = _against_pure_error(lack)
+    against = "" if lack is None else lack_of_fit_words(lack)
+    if record["lack_of_fit_within_series"]:
+        against += ", with the differences between whole series taken out"
     if lack is not None and not significant:
         return "adequate", f"no lack of fit against pure error ({against})"
     size = "" if record["misfit"] is None else f"largest mean deviation of a level {amount(record['misfit'], unit)}"
@@ -80,10 +82,6 @@ def _smooth_signs(record: dict) -> list[str]:
             f"{probability(serial['p'])})"
         )
     return signs
-
-
-def _against_pure_error(lack: dict | None) -> str:
-    return "" if lack is None else lack_of_fit_words(lack)
 
 
 def lack_of_fit_words(lack: dict) -> str:

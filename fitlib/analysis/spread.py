@@ -8,7 +8,7 @@ import numpy as np
 from scipy import stats
 
 from fitlib.analysis.dataset import DatasetArrays
-from fitlib.numerics.components import SIGNIFICANT, Components, LackOfFit, series_effect
+from fitlib.numerics.components import SIGNIFICANT, Components, LackOfFit, SeriesEffect, series_effect
 from fitlib.numerics.uncertainty import coefficient_covariance, effective_degrees_of_freedom
 
 
@@ -28,6 +28,8 @@ class Spread:
         Of the scaled coefficients.
     degrees_of_freedom : float
         Of the covariance, effective where several variances enter.
+    lack_of_fit : LackOfFit or None
+        Against what remains within levels and series, where whole series differ; else against pure error.
     """
 
     reading: float
@@ -36,6 +38,7 @@ class Spread:
     series_variance: float
     covariance: np.ndarray
     degrees_of_freedom: float
+    lack_of_fit: LackOfFit | None
 
 
 def find_spread(
@@ -64,7 +67,8 @@ def find_spread(
     single = fit.residual_sum_of_squares / free if free > 0 else np.nan
     effect = None if exact else series_effect(fit.residual, data.root_weights, data.level_index, data.series_index)
     series_found = effect is not None and effect.p < SIGNIFICANT
-    level_found = not exact and lack is not None and _level_probability(lack, effect, series_found) < SIGNIFICANT
+    lack = _against_rest(lack, effect) if series_found and lack is not None else lack
+    level_found = not exact and lack is not None and lack.p < SIGNIFICANT
     level_variance = parts.level_deviation**2 if level_found and parts.level_deviation > 0 else 0.0
     series_variance = effect.deviation**2 if series_found else 0.0
     if series_found:
@@ -80,17 +84,20 @@ def find_spread(
         series_variance=float(series_variance),
         covariance=covariance,
         degrees_of_freedom=degrees,
+        lack_of_fit=lack,
     )
 
 
-def _level_probability(lack: LackOfFit, effect, series_found: bool) -> float:
-    """Probability of the lack of fit; against what remains within levels and series where whole series differ."""
-    if not series_found:
-        return lack.p
+def _against_rest(lack: LackOfFit, effect: SeriesEffect) -> LackOfFit:
+    """Lack of fit against the scatter that is left when the means of the series are taken out.
+
+    Differences between whole series are common to all levels: they blow up pure error and would hide a misfit.
+    """
     mean_square = lack.sum_of_squares / lack.numerator_df
-    if not effect.rest_variance > 0:
-        return 0.0 if mean_square > 0 else 1.0
-    return float(stats.f.sf(mean_square / effect.rest_variance, lack.numerator_df, effect.denominator_df))
+    rest, free = effect.rest_variance, effect.denominator_df
+    f = mean_square / rest if rest > 0 else (np.inf if mean_square > 0 else 0.0)
+    p = float(stats.f.sf(f, lack.numerator_df, free))
+    return LackOfFit(float(f), p, lack.numerator_df, free, lack.sum_of_squares, rest * free)
 
 
 def _covariance(fit, design: np.ndarray, data: DatasetArrays, single, level_variance, series_variance):

@@ -31,9 +31,10 @@ def coefficient_covariance(
 ) -> np.ndarray:
     """Covariance of least-squares coefficients when levels or series carry their own deviation.
 
-    ``(A^T A)^-1 A^T V A (A^T A)^-1`` with ``V = reading_variance I + level_variance Z Z^T + series_variance S S^T`` in the weighted scale, ``Z`` and ``S`` telling which observations share a level and a series
-    (Searle, Casella & McCulloch, Variance Components, 1992, sec. 3.2; for balanced data the same as the covariance from
-    level means). With no other variance it is ``reading_variance * (A^T A)^-1``.
+    ``(A^T A)^-1 A^T V A (A^T A)^-1`` with ``V = reading_variance I + level_variance Z Z^T + series_variance S S^T`` in
+    the weighted scale, ``Z`` and ``S`` telling which observations share a level and a series (Searle, Casella &
+    McCulloch, Variance Components, 1992, sec. 3.2; for balanced data the same as the covariance from level means).
+    With no other variance it is ``reading_variance * (A^T A)^-1``.
 
     Parameters
     ----------

@@ -5,12 +5,18 @@ import pytest
 from fitlib.analysis.judgement import judge
 
 
-def _record(p=None, serial=None, gain=None, misfit=0.02, exact=False):
-    lack = None if p is None else {"f": 5.0, "p": p, "numerator_df": 8, "denominator_df": 22}
-    lack = lack and lack | {"sum_of_squares": 1.0, "pure_error_sum_of_squares": 0.1}
+def _lack(p):
+    if p is None:
+        return None
+    degrees = {"numerator_df": 8, "denominator_df": 22}
+    return {"f": 5.0, "p": p, "sum_of_squares": 1.0, "pure_error_sum_of_squares": 0.1} | degrees
+
+
+def _record(p=None, serial=None, gain=None, misfit=0.02, exact=False, within_series=None):
     return {
         "exact": exact,
-        "lack_of_fit": lack,
+        "lack_of_fit": _lack(p),
+        "lack_of_fit_within_series": _lack(within_series),
         "serial": None if serial is None else {"ratio": 0.7, "p": serial},
         "probe_gain": gain,
         "misfit": misfit,
@@ -43,6 +49,19 @@ def test_a_smooth_misfit_smaller_than_the_target_is_accepted(target, verdict):
 
 def test_a_misfit_without_size_is_never_smaller_than_the_target():
     assert judge(_record(p=1e-9, gain=3.0, misfit=None), 11, True, 1e9, "kN")[0] == "inadequate"
+
+
+def test_differences_between_whole_series_do_not_hide_a_misfit():
+    verdict, reason = judge(_record(p=0.9, within_series=1e-9, gain=3.0), 11, True, None, "kN")
+    assert verdict == "inadequate"
+    assert "differences between whole series taken out" in reason
+
+
+@pytest.mark.parametrize(
+    "levels, target, verdict", [(6, None, "not_evaluated"), (6, 0.03, "adequate"), (7, None, "adequate")]
+)
+def test_an_excess_with_few_levels_is_not_called_irregular(levels, target, verdict):
+    assert judge(_record(p=1e-9, misfit=0.02), levels, True, target, "kN")[0] == verdict
 
 
 @pytest.mark.parametrize("levels, verdict", [(6, "not_evaluated"), (7, "adequate")])
