@@ -8,16 +8,12 @@ from fitlib.analysis.candidates import CandidateSet
 from fitlib.analysis.dataset import DatasetArrays, make_arrays
 from fitlib.analysis.evaluated import in_evaluated_unit, needs_inversion
 from fitlib.analysis.fits import make_candidates
-from fitlib.analysis.function_record import function_record, observation_spread
+from fitlib.analysis.function_record import function_record
+from fitlib.analysis.in_use import make_curves, need_met, verification_table
 from fitlib.analysis.jsonable import number, numbers
 from fitlib.analysis.warnings import collect_warnings
 from fitlib.numerics.diagnostics import studentized_residuals, suspects
 from fitlib.numerics.families import restore
-from fitlib.numerics.uncertainty import confidence_band, prediction_interval
-
-#: Points of each curve for figures.
-CURVE_POINTS = 201
-COVERAGE_PROBABILITY = 0.95
 
 #: What a candidate that was not fitted has in place of each number.
 _EMPTY = {
@@ -34,6 +30,7 @@ _EMPTY = {
     "turning_points": [],
     "excursion": None,
     "lack_of_fit": None,
+    "lack_of_fit_within_series": None,
     "misfit": None,
     "serial": None,
     "terms": [],
@@ -67,6 +64,7 @@ def assemble(study, dataset, observations, steps: dict[str, dict]) -> dict:
     records = steps["fits"]["candidates"]
     chosen = records.get(selection["candidate"]) if selection["candidate"] else None
     rows = _observation_table(observations, data, candidates, chosen)
+    curves = make_curves(records, chosen, data, study, dataset)
     result = {
         "format": 1,
         "dataset": dataset.id,
@@ -78,9 +76,10 @@ def assemble(study, dataset, observations, steps: dict[str, dict]) -> dict:
         "design": _design(data),
         "candidates": [_candidate(record, schemes, selection) for record in records.values()],
         "schemes": [_scheme(scheme) for scheme in schemes],
-        "selection": _selection(selection, records, schemes, rows, chosen, dataset),
-        "verification": _verification(rows, chosen, dataset),
-        "curves": _curves(records, chosen, data, study, dataset),
+        "selection": _selection(selection, records, schemes, rows, chosen, dataset)
+        | need_met(chosen, data, study, dataset),
+        "verification": verification_table(rows, chosen, data, study, dataset),
+        "curves": curves,
         "function": None if chosen is None else function_record(study, dataset, data, chosen, selection),
     }
     result["warnings"] = collect_warnings(result, study, dataset, observations)
@@ -280,45 +279,4 @@ def _components(chosen: dict, rows: dict, dataset) -> dict:
         value = parts[name]
         result[f"{name}_evaluated"] = None if value is None or not slope > 0 else value / slope
     found = ("level_deviation_found", "series_deviation_found")
-    return result | {name: parts[name] for name in found}
-
-
-def _verification(rows: dict, chosen: dict | None, dataset) -> list[dict]:
-    which = [k for k, state in enumerate(rows["state"]) if state == "verification"]
-    if chosen is None or not which:
-        return []
-    curve = restore(chosen["scaled"])
-    residual = np.array([rows["residual"][k] for k in which], dtype=float)
-    converted = in_evaluated_unit(curve, dataset, _abscissa(rows, np.array(which), dataset), residual)
-    columns = ("file", "row", "series", "stimulus", "response", "fitted", "residual")
-    return [
-        {name: rows[name][k] for name in columns} | {"evaluated_deviation": number(value)}
-        for k, value in zip(which, converted, strict=True)
-    ]
-
-
-def _curves(records: dict, chosen: dict | None, data: DatasetArrays, study, dataset) -> dict:
-    grid = np.linspace(*data.x_interval, CURVE_POINTS)
-    quantity = study.response if dataset.function == "analysis" else study.stimulus
-    fitted = {name: record for name, record in records.items() if record["status"] == "fitted"}
-    result = {
-        "stimulus": numbers(grid),
-        "abscissa": {"quantity": quantity.quantity, "unit": quantity.unit},
-        "candidates": {name: numbers(restore(record["scaled"]).evaluate(grid)) for name, record in fitted.items()},
-        "confidence_band": None,
-        "prediction_interval": None,
-    }
-    if chosen is None or chosen["observation_variance"] is None:
-        return result
-    curve, covariance = restore(chosen["scaled"]), np.array(chosen["covariance"], dtype=float)
-    free = chosen["covariance_degrees_of_freedom"]
-    variance = chosen["observation_variance"] * observation_spread(study, dataset, curve, grid, data) ** 2
-    band = confidence_band(curve, covariance, free, grid, COVERAGE_PROBABILITY)
-    interval = prediction_interval(curve, covariance, free, grid, variance, COVERAGE_PROBABILITY)
-    for name, limits in (("confidence_band", band), ("prediction_interval", interval)):
-        result[name] = {
-            "coverage_probability": limits.coverage_probability,
-            "lower": numbers(limits.lower),
-            "upper": numbers(limits.upper),
-        }
-    return result
+    return result | {name: parts[name] for name in found} | {"direction_difference": chosen["direction_difference"]}

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -12,9 +12,6 @@ from fitlib.numerics.bootstrap import BootstrapErrors, bootstrap_errors
 from fitlib.numerics.families import Family, Member, make_family, parameter_count
 from fitlib.numerics.families.protocol import Problem
 from fitlib.numerics.validation import Fold, SchemeErrors, scheme_errors
-
-#: Draws for which residuals are held together; the results do not depend on it.
-DRAWS_AT_ONCE = 256
 
 
 @dataclass(frozen=True)
@@ -121,30 +118,30 @@ class CandidateSet:
             *(np.concatenate([getattr(p, n) for p in parts]) for n in ("squared", "fold_loss", "failed"))
         )
 
-    def bootstrap(self, counts: np.ndarray, units: np.ndarray) -> BootstrapErrors:
-        """Bootstrap errors of all entries for the same draws."""
+    def bootstrap(self, counts: Callable[[], Iterable[np.ndarray]], units: np.ndarray) -> BootstrapErrors:
+        """Bootstrap errors of all entries for the same draws; ``counts`` starts the draws anew for each family."""
         parts = [
-            bootstrap_errors(group.problem, group.parameters, counts, units, self.data.level_index)
+            bootstrap_errors(group.problem, group.parameters, counts(), units, self.data.level_index)
             for group in self._groups.values()
         ]
         return BootstrapErrors(
             np.concatenate([part.squared for part in parts]),
             np.concatenate([part.rank_deficient for part in parts]),
             parts[0].left_out,
+            parts[0].draws,
         )
 
     def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
-        """Held-out residuals within resamples, shape (draws, entries, n)."""
-        parts = [_joined(group.problem.resampled_held_out(counts, blocks)) for group in self._groups.values()]
-        return np.concatenate(parts, axis=1)
+        """Held-out residuals within resamples, shape (entries, n, draws)."""
+        return np.concatenate([group.problem.resampled_held_out(counts, blocks) for group in self._groups.values()])
+
+    def residuals(self) -> np.ndarray:
+        """Residuals on the fitted points, shape (entries, n); nan without a fit."""
+        return np.concatenate([group.problem.residuals() for group in self._groups.values()])
 
     def refit(self, counts: np.ndarray) -> np.ndarray:
-        """Residuals of fits to resamples, shape (draws, entries, n)."""
-        return np.concatenate([_joined(group.problem.refit(counts)) for group in self._groups.values()], axis=1)
-
-
-def _joined(parts) -> np.ndarray:
-    return np.concatenate([residual for _, residual in parts])
+        """Residuals of fits to resamples, shape (entries, n, draws)."""
+        return np.concatenate([group.problem.refit(counts) for group in self._groups.values()])
 
 
 def declared_candidates(families) -> list[Declared]:

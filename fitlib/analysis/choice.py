@@ -2,19 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 import numpy as np
 
-from fitlib.analysis.candidates import DRAWS_AT_ONCE, CandidateSet
+from fitlib.analysis.candidates import CandidateSet
 from fitlib.analysis.fits import loss_floor
 from fitlib.analysis.jsonable import number
 from fitlib.analysis.schemes import FEWEST_FOLDS_TO_DECIDE, evaluate_scheme, make_units
 from fitlib.analysis.streams import draw_counts
 from fitlib.analysis.words import amount, listed
-from fitlib.numerics.components import level_residuals
-from fitlib.numerics.selection import LOSS_RULES, Choice, Evidence, choose, take
+from fitlib.numerics.bootstrap import RESIDUALS_AT_ONCE
+from fitlib.numerics.selection import FIT_RULES, LOSS_RULES, Choice, Evidence, ManyEvidence, choose, take, take_many
 from fitlib.numerics.validation import Fold, level_means, summarise, unit_folds, weighted_mean
 
 #: With more levels than this, outer folds and folds within resamples are interleaved groups of levels.
@@ -147,10 +146,14 @@ def evidence_for(candidates: CandidateSet, rule: Rule, stream_names: tuple = ())
         if outcome.message:
             return None
         losses = outcome.loss.levels
-    squares = np.full(len(candidates.entries), np.nan)
-    if rule.name not in LOSS_RULES:
-        squares = np.array([_level_squares(fit, data) for fit in candidates.fit()])
-    return Evidence(candidates.parameters, losses, data.level_weights, squares, loss_floor(data))
+    return Evidence(candidates.parameters, losses, data.level_weights, _level_squares(candidates), loss_floor(data))
+
+
+def _level_squares(candidates: CandidateSet) -> np.ndarray:
+    """Weighted sum of squares of the level means about each fit, shape (entries,)."""
+    data = candidates.data
+    means = level_means(candidates.residuals(), data.root_weights**2, data.level_index, data.levels.size)
+    return means**2 @ data.level_weights
 
 
 def _fitting(scheme, data):
@@ -158,13 +161,6 @@ def _fitting(scheme, data):
     if scheme.scheme != "k_fold":
         return scheme
     return replace(scheme, folds=min(scheme.folds, len(make_units(data, scheme.unit).labels)))
-
-
-def _level_squares(fit, data) -> float:
-    if fit.message:
-        return np.nan
-    means, weights = level_residuals(fit.residual, data.root_weights, data.level_index)
-    return float(np.sum(weights * means**2))
 
 
 def level_groups(level_index: np.ndarray, count: int) -> list[Fold]:
@@ -243,46 +239,44 @@ def resampled_selection(candidates: CandidateSet, rule: Rule, scheme, eligible: 
     """
     data = candidates.data
     units = make_units(data, scheme.unit)
-    counts = draw_counts(rule.seed, (rule.dataset_id, scheme.id), len(units.labels), scheme.draws)
     taken = np.zeros(len(candidates.entries), dtype=int)
-    for start in range(0, scheme.draws, DRAWS_AT_ONCE):
-        rows = counts[start : start + DRAWS_AT_ONCE][:, units.index]
-        for evidence in _evidence_of_draws(candidates, rows, rule):
-            position = take(evidence, rule.name, eligible, rule.alpha)
-            if position is not None:
-                taken[position] += 1
+    step = max(1, RESIDUALS_AT_ONCE // (data.rows.size * len(candidates.entries)))
+    for counts in draw_counts(rule.seed, (rule.dataset_id, scheme.id), len(units.labels), scheme.draws):
+        for start in range(0, counts.shape[0], step):
+            evidence = _evidence_of_draws(candidates, counts[start : start + step, units.index], rule)
+            positions = take_many(evidence, rule.name, eligible, rule.alpha)
+            taken += np.bincount(positions[positions >= 0], minlength=taken.size)
     entries = enumerate(candidates.entries)
     share = {entry.candidate: float(taken[k] / scheme.draws) for k, entry in entries if entry.candidate}
     return {"bootstrap_share": share, "draws_without_choice": int(scheme.draws - taken.sum())}
 
 
-def _evidence_of_draws(candidates: CandidateSet, rows: np.ndarray, rule: Rule) -> Iterator[Evidence]:
+def _evidence_of_draws(candidates: CandidateSet, rows: np.ndarray, rule: Rule) -> ManyEvidence:
+    """Evidence of each draw; observations are in the order of their levels."""
     data = candidates.data
+    weights = (data.root_weights**2 * rows).T
+    starts = np.flatnonzero(np.diff(data.level_index, prepend=-1))
+    level_weights = np.add.reduceat(weights, starts, axis=0)
+    losses = np.full((len(candidates.entries), level_weights.shape[0], rows.shape[0]), np.nan)
+    squares = np.full((len(candidates.entries), rows.shape[0]), np.nan)
     if rule.name in LOSS_RULES:
         blocks = [fold.rows for fold in level_groups(data.level_index, data.levels.size)]
-        residuals = candidates.resampled_held_out(rows, blocks)
-    else:
-        residuals = candidates.refit(rows)
-    for draw, residual in zip(rows, residuals, strict=True):
-        yield _evidence_of_draw(candidates, draw, residual, rule)
+        losses = _per_level(candidates.resampled_held_out(rows, blocks) ** 2, weights, level_weights, starts)
+    if rule.name in FIT_RULES:
+        means = _per_level(candidates.refit(rows), weights, level_weights, starts)
+        squares = np.einsum("mld,ld->md", means**2, level_weights)
+    # With no level more than its parameters nothing would be left to judge a candidate by
+    undetermined = candidates.parameters[:, None] >= (level_weights > 0).sum(axis=0)[None, :]
+    losses.transpose(0, 2, 1)[undetermined] = np.nan
+    squares[undetermined] = np.nan
+    return ManyEvidence(candidates.parameters, losses, level_weights, squares, loss_floor(data))
 
 
-def _evidence_of_draw(candidates: CandidateSet, draw: np.ndarray, residual: np.ndarray, rule: Rule) -> Evidence:
-    data = candidates.data
-    weights = data.root_weights**2 * draw
-    level_weights = np.bincount(data.level_index, weights, minlength=data.levels.size)
-    drawn = level_weights > 0
-    undetermined = candidates.parameters >= drawn.sum()  # nothing would be left to judge it by
-    used = np.where(draw > 0, residual, 0.0)
-    losses = np.full((len(candidates.entries), int(drawn.sum())), np.nan)
-    squares = np.full(len(candidates.entries), np.nan)
-    if rule.name in LOSS_RULES:
-        losses = level_means(used**2, weights, data.level_index, data.levels.size)[:, drawn]
-        losses[undetermined] = np.nan
-    else:
-        means = level_means(used, weights, data.level_index, data.levels.size)[:, drawn]
-        squares = np.where(undetermined, np.nan, means**2 @ level_weights[drawn])
-    return Evidence(candidates.parameters, losses, level_weights[drawn], squares, loss_floor(data))
+def _per_level(values: np.ndarray, weights: np.ndarray, level_weights: np.ndarray, starts: np.ndarray) -> np.ndarray:
+    """Weighted means per level, shape (entries, L, draws); 0 at levels that were not drawn."""
+    sums = np.add.reduceat(np.where(weights > 0, values * weights, 0.0), starts, axis=1)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.where(level_weights > 0, sums / level_weights, 0.0)
 
 
 def interior_choice(evidence: Evidence, rule: Rule, eligible: np.ndarray) -> int | None:

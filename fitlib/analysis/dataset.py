@@ -33,6 +33,8 @@ class DatasetArrays:
         responses of the levels, as no candidate is preferred here.
     swapped : bool
         True for an analysis function: x is the response.
+    direction_index : ndarray of shape (n,), int, or None
+        0 rising, 1 falling; None unless every observation says which.
     """
 
     rows: np.ndarray
@@ -47,6 +49,7 @@ class DatasetArrays:
     interval: tuple[float, float]
     x_interval: tuple[float, float]
     swapped: bool = False
+    direction_index: np.ndarray | None = None
 
     @property
     def level_weights(self) -> np.ndarray:
@@ -67,6 +70,7 @@ class DatasetArrays:
             root_weights=self.root_weights[keep],
             level_index=number[self.level_index[keep]],
             series_index=self.series_index[keep],
+            direction_index=None if self.direction_index is None else self.direction_index[keep],
             levels=self.levels[kept],
         )
 
@@ -92,7 +96,7 @@ def make_arrays(study, dataset, observations) -> DatasetArrays:
     level_index = np.asarray(observations.level_index, dtype=int)[rows]
     first = np.unique(level_index, return_index=True)[1]
     levels = np.asarray(observations.level, dtype=float)[rows][first]
-    interval = dataset.measuring_interval or (float(stimulus.min()), float(stimulus.max()))
+    interval = dataset.measuring_interval or (float(levels[0]), float(levels[-1]))
     swap = dataset.function == "analysis"
     return DatasetArrays(
         rows=rows,
@@ -107,6 +111,7 @@ def make_arrays(study, dataset, observations) -> DatasetArrays:
         interval=(float(interval[0]), float(interval[1])),
         x_interval=_between_levels(response, stimulus, level_index, interval) if swap else tuple(map(float, interval)),
         swapped=swap,
+        direction_index=_directions([observations.direction[row] for row in rows]),
     )
 
 
@@ -122,6 +127,12 @@ def _canonical_order(observations) -> np.ndarray:
         )
     )
     return np.array(used, dtype=int)
+
+
+def _directions(words: list[str]) -> np.ndarray | None:
+    if set(words) != {"rising", "falling"}:
+        return None
+    return np.array([int(word == "falling") for word in words])
 
 
 def _between_levels(response: np.ndarray, stimulus: np.ndarray, level_index: np.ndarray, interval):

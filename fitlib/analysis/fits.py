@@ -11,8 +11,10 @@ from fitlib.analysis.jsonable import matrix, number, numbers
 from fitlib.analysis.schemes import level_losses
 from fitlib.analysis.spread import Spread, find_spread
 from fitlib.numerics.components import (
+    SIGNIFICANT,
     Components,
     LackOfFit,
+    direction_difference,
     lack_of_fit,
     level_residuals,
     level_space,
@@ -86,7 +88,9 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
     curve = candidates.curve(position, fit.coefficients)
     design = curve.jacobian(data.x)
     lack = lack_of_fit(fit.residual, data.root_weights, data.level_index, item.parameters)
-    parts = variance_components(fit.residual, design, data.root_weights, data.level_index, data.series_index)
+    parts = variance_components(
+        fit.residual, design, data.root_weights, data.level_index, data.series_index, data.direction_index
+    )
     exact = is_exact(fit.residual_sum_of_squares, data)
     spread = find_spread(fit, design, parts, lack, data, exact)
     covariance = spread.covariance
@@ -99,6 +103,7 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
         | _misfit(curve, fit, design, data, dataset, lack, gain)
         | {
             "components": _components(parts, spread),
+            "direction_difference": _direction(curve, fit, data, dataset, exact),
             "lack_of_fit_within_series": None if spread.lack_of_fit is lack else _lack_record(spread.lack_of_fit),
             "covariance": matrix(covariance),
             "covariance_degrees_of_freedom": number(spread.degrees_of_freedom),
@@ -204,6 +209,25 @@ def _misfit(curve, fit, design, data: DatasetArrays, dataset, lack: LackOfFit | 
         "misfit_level": number(data.levels[int(np.argmax(np.where(np.isfinite(sizes), sizes, -1)))]),
         "serial": None if serial is None else {"ratio": number(serial.ratio), "p": number(serial.p)},
         "probe_gain": number(gain),
+    }
+
+
+def _direction(curve, fit, data: DatasetArrays, dataset, exact: bool) -> dict | None:
+    """Rising less falling, in the evaluated unit, where the observations say which way they were met."""
+    if data.direction_index is None or exact:
+        return None
+    found = direction_difference(fit.residual, data.root_weights, data.level_index, data.direction_index)
+    if found is None:
+        return None
+    at = np.bincount(data.level_index, data.x) / np.bincount(data.level_index)
+    sizes = np.abs(in_evaluated_unit(curve, dataset, at, np.nan_to_num(found.difference)))
+    place = int(np.argmax(sizes))
+    return {
+        "largest": number(sizes[place]),
+        "at": number(data.levels[place]),
+        "f": number(found.f),
+        "p": number(found.p),
+        "found": bool(found.p < SIGNIFICANT),
     }
 
 

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import hashlib
+import json
+
 import numpy as np
 
 from fitlib.analysis.dataset import DatasetArrays
@@ -34,7 +37,7 @@ def function_record(study, dataset, data: DatasetArrays, chosen: dict, selection
         JSON-able.
     """
     curve = restore(chosen["scaled"])
-    return {
+    record = {
         "format": 1,
         "dataset": dataset.id,
         "family": chosen["family"],
@@ -58,13 +61,30 @@ def function_record(study, dataset, data: DatasetArrays, chosen: dict, selection
         "verdict_reason": selection["verdict_reason"],
         "choice": selection["choice"],
         "uncertainty_statement": FIT_ONLY,
-        "cautions": cautions(study, dataset, data, selection["verdict"]),
+        "cautions": cautions(study, dataset, data, selection["verdict"], chosen["reading_standard_deviation"] > 0),
         "record": dict(dataset.record),
         "test_vectors": _test_vectors(dataset, curve, data, chosen["monotone"]),
     }
+    return record | {"digest": record_digest(record)}
 
 
-def cautions(study, dataset, data: DatasetArrays, verdict: str) -> list[str]:
+def record_digest(record: dict) -> str:
+    """SHA-256 of a function record without its digest, so that a hand edit is noticed when it is read.
+
+    Parameters
+    ----------
+    record : dict
+
+    Returns
+    -------
+    str
+        Hexadecimal.
+    """
+    text = json.dumps(record, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
+    return hashlib.sha256(text.encode("utf-8")).hexdigest()
+
+
+def cautions(study, dataset, data: DatasetArrays, verdict: str, repeatability_known: bool = True) -> list[str]:
     """What a user of the function has to be told.
 
     Parameters
@@ -73,6 +93,7 @@ def cautions(study, dataset, data: DatasetArrays, verdict: str) -> list[str]:
     dataset : fitlib.study.DatasetSettings
     data : DatasetArrays
     verdict : str
+    repeatability_known : bool
 
     Returns
     -------
@@ -91,6 +112,8 @@ def cautions(study, dataset, data: DatasetArrays, verdict: str) -> list[str]:
         "accredited procedures and the judgement of licensed or otherwise competent persons take precedence.",
         "Check it against an independent standard before use.",
     ]
+    if not repeatability_known:
+        lines.insert(3, "Repeatability was not observed: averaging readings does not reduce the uncertainty stated.")
     if verdict != "adequate":
         lines.insert(0, f"Verdict {verdict}: not to be used for conversion.")
     return lines

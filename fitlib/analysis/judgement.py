@@ -47,8 +47,11 @@ def judge(record: dict, levels: int, replicates: bool, target: float | None, uni
     against = "" if lack is None else lack_of_fit_words(lack)
     if record["lack_of_fit_within_series"]:
         against += ", with the differences between whole series taken out"
+        against += (
+            f"; with them left in F = {figure(record['lack_of_fit']['f'], 5)}" if record["lack_of_fit"]["f"] else ""
+        )
     if lack is not None and not significant:
-        return "adequate", f"no lack of fit against pure error ({against})"
+        return "adequate", f"no lack of fit detected against the scatter within levels ({against})"
     size = "" if record["misfit"] is None else f"largest mean deviation of a level {amount(record['misfit'], unit)}"
     within_target = target is not None and record["misfit"] is not None and record["misfit"] <= target
     if not smooth and lack is not None and levels < FEWEST_LEVELS and not within_target:
@@ -59,7 +62,7 @@ def judge(record: dict, levels: int, replicates: bool, target: float | None, uni
         )
     if not smooth:
         if lack is None:
-            return "adequate", "no smooth misfit is seen; there are no replicates to compare it with"
+            return "adequate", "no smooth misfit detected; there are no replicates to compare it with"
         return "adequate", (
             f"the levels scatter more than their replicates ({against}), but irregularly: "
             "a deviation of the levels, not a misfit of the function"

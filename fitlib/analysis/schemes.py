@@ -153,11 +153,11 @@ def _folds(scheme, units: Units, seed: int | None, names: tuple) -> list[Fold]:
 
 def _bootstrap(candidates: CandidateSet, scheme, units: Units, seed: int, names: tuple) -> SchemeOutcome:
     data = candidates.data
-    counts = draw_counts(seed, names, len(units.labels), scheme.draws)
-    errors = candidates.bootstrap(counts, units.index)
+    errors = candidates.bootstrap(lambda: draw_counts(seed, names, len(units.labels), scheme.draws), units.index)
     loss = summarise(errors.squared, data.root_weights, data.level_index, data.levels.size)
     losses = unit_losses(errors.squared, data.root_weights**2, units.index, len(units.labels))
     sizes = np.bincount(units.index, minlength=len(units.labels))
-    left_out = (counts == 0).sum(axis=0)
+    first = np.unique(units.index, return_index=True)[1]
+    left_out = errors.left_out[first]
     rows = tuple((label, int(sizes[k]), losses[:, k], int(left_out[k])) for k, label in enumerate(units.labels))
     return SchemeOutcome("", loss, rows, None, errors.rank_deficient)

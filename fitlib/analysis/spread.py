@@ -19,7 +19,7 @@ class Spread:
     Attributes
     ----------
     reading : float
-        Standard deviation that averaging readings divides.
+        Repeatability, which averaging readings divides; 0 where the design does not show it.
     not_divided : float
         Standard deviation of one new observation that averaging does not divide.
     level_variance, series_variance : float
@@ -75,7 +75,8 @@ def find_spread(
         single = effect.rest_variance
     elif level_variance > 0:
         single = parts.pure_error**2
-    repeat = min(single, parts.repeatability**2) if np.isfinite(parts.repeatability) else single
+    # Averaging divides the repeatability only; where that was not observed, it divides nothing
+    repeat = min(single, parts.repeatability**2) if np.isfinite(parts.repeatability) else 0.0
     covariance, degrees = _covariance(fit, design, data, single, level_variance, series_variance)
     return Spread(
         reading=float(np.sqrt(repeat)),

@@ -21,7 +21,7 @@ from fitlib.analysis.jsonable import number, numbers
 from fitlib.analysis.judgement import judge
 from fitlib.analysis.reasons import candidate_reasons
 from fitlib.analysis.schemes import UNIT_OF, evaluate_scheme, is_row_wise, level_losses
-from fitlib.numerics.selection import LOSS_RULES, Choice
+from fitlib.numerics.selection import LOSS_RULES, Choice, deciding_gains
 from fitlib.numerics.validation import weighted_mean
 
 
@@ -121,14 +121,16 @@ def _selection(candidates: CandidateSet, study, dataset, earlier: dict[str, dict
     names = [entry.candidate for entry in candidates.entries]
     eligible = np.array([bool(name) and not obstacles[name] for name in names], dtype=bool)
     result = _nothing(records, obstacles)
-    choice = Choice(None)
+    choice, gains = Choice(None), {}
     if not cannot and eligible.any():
         evidence = evidence_for(candidates, rule)
         choice = make_choice(evidence, rule, eligible)
+        if rule.name == "supported_gain" and choice.chosen is not None:
+            gains = deciding_gains(evidence, choice, eligible, rule.alpha)
         result |= outer_loop(candidates, rule, eligible)
         result |= _chosen(candidates, choice, evidence, rule, eligible, names)
         result |= _resampled(candidates, study, rule, eligible)
-    result["reasons"] = candidate_reasons(names, choice, obstacles, records, rule.name, cannot)
+    result["reasons"] = candidate_reasons(names, choice, gains, obstacles, records, rule.name, cannot)
     if result["candidate"] is not None:
         result["choice_reason"] = result["reasons"][result["candidate"]].removeprefix("chosen: ")
     result |= _verdict(result["candidate"], records, candidates.data, study, dataset, cannot, eligible)
@@ -199,8 +201,9 @@ def _verdict(chosen, records: dict, data: DatasetArrays, study, dataset, cannot:
             evaluated.unit,
         )
         return {"verdict": verdict, "verdict_reason": reason}
+    if not any(record["status"] == "fitted" for record in records.values()):
+        why = next(iter(records.values()))["message"]
+        return {"verdict": "not_evaluated", "verdict_reason": f"no candidate can be fitted: {why}"}
     if cannot:
         return {"verdict": "not_evaluated", "verdict_reason": cannot}
-    if not any(record["status"] == "fitted" for record in records.values()):
-        return {"verdict": "not_evaluated", "verdict_reason": "no candidate can be fitted to these observations"}
     return {"verdict": "inadequate", "verdict_reason": "none of the candidates is eligible"}

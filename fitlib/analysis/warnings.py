@@ -34,6 +34,9 @@ def collect_warnings(result: dict, study, dataset, observations) -> list[str]:
         warnings += _suspects(result)
         warnings += _levels(result, chosen)
         warnings += _series(result)
+        warnings += _direction(result)
+        warnings += _need(result)
+        warnings += _verification(result)
         warnings += _shape(result, chosen)
         warnings += _rivals(result, chosen)
     return warnings
@@ -105,6 +108,47 @@ def _series(result: dict) -> list[str]:
         text += f", or {amount(parts['series_deviation_evaluated'], result['settings']['evaluated']['unit'], 2)}"
     count = result["design"]["series"]
     return [f"{text}, from {count} series; it enters the uncertainty and does not shrink with more levels"]
+
+
+def _direction(result: dict) -> list[str]:
+    found = result["selection"]["components"]["direction_difference"]
+    if found is None or not found["found"]:
+        return []
+    place = amount(found["at"], result["settings"]["stimulus"]["unit"])
+    size = amount(found["largest"], result["settings"]["evaluated"]["unit"], 2)
+    return [
+        f"rising and falling observations differ, by up to {size} at {place}; the function runs between them, and the "
+        "difference counts as scatter that averaging does not divide"
+    ]
+
+
+def _need(result: dict) -> list[str]:
+    target, largest = result["settings"]["target"], result["selection"]["largest_expanded_uncertainty"]
+    chosen = next(item for item in result["candidates"] if item["chosen"])
+    if target is None or result["selection"]["target_met"] is not False or largest is None:
+        return []
+    unit = result["settings"]["evaluated"]["unit"]
+    parts = [
+        f"{name} {amount(value, unit, 2)}"
+        for name, value in (
+            ("expanded uncertainty of one converted reading up to", largest["value"]),
+            ("largest mean deviation of a level", chosen["misfit"]),
+        )
+        if value is not None and value > target["expanded"]
+    ]
+    return [f"the target of {amount(target['expanded'], unit)} is not met: {listed(parts)}"]
+
+
+def _verification(result: dict) -> list[str]:
+    points = result["verification"]
+    outside = [point for point in points if point["within_prediction_interval"] is False]
+    if not outside:
+        return []
+    named = listed([f"{point['file']} row {point['row']}" for point in outside[:5]])
+    more = f" and {len(outside) - 5} more" if len(outside) > 5 else ""
+    return [
+        f"{len(outside)} of {len(points)} verification points lie outside the 95 % prediction interval: {named}{more}"
+    ]
 
 
 def _shape(result: dict, chosen: dict) -> list[str]:

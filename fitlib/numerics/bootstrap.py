@@ -6,7 +6,7 @@ observation's squared error is averaged over the draws that left its unit out. C
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -16,8 +16,8 @@ from fitlib.numerics.validation import weighted_mean
 
 #: A member that cannot be fitted in more than this share of the draws gets no bootstrap loss.
 LARGEST_FAILED_SHARE = 0.10
-#: Counts expanded from units to observations at once; the results do not depend on it.
-COUNTS_AT_ONCE = 4_000_000
+#: Residuals held at once; the results depend on it by rounding alone.
+RESIDUALS_AT_ONCE = 4_000_000
 
 
 @dataclass(frozen=True)
@@ -33,15 +33,21 @@ class BootstrapErrors:
         Draws that did not determine the member.
     left_out : ndarray of shape (n,), int
         Draws that left the observation out.
+    draws : int
     """
 
     squared: np.ndarray
     rank_deficient: np.ndarray
     left_out: np.ndarray
+    draws: int
 
 
 def bootstrap_errors(
-    problem: Problem, parameters: Sequence[int], counts: np.ndarray, units: np.ndarray, level_index: np.ndarray
+    problem: Problem,
+    parameters: Sequence[int],
+    counts: Iterable[np.ndarray],
+    units: np.ndarray,
+    level_index: np.ndarray,
 ) -> BootstrapErrors:
     """Refit to every draw and average the squared errors of the observations not drawn.
 
@@ -50,7 +56,8 @@ def bootstrap_errors(
     problem : Problem
     parameters : sequence of int
         Of each member; a draw with fewer distinct levels fails.
-    counts : ndarray of shape (draws, units), int
+    counts : iterable of ndarray of shape (draws, units), int
+        Draws, in blocks; the results do not depend on how they are cut.
     units : ndarray of shape (n,), int
         Unit of each observation.
     level_index : ndarray of shape (n,), int
@@ -60,22 +67,27 @@ def bootstrap_errors(
     BootstrapErrors
     """
     members, n = len(parameters), units.size
+    sizes = np.asarray(parameters)
     total, number = np.zeros((members, n)), np.zeros((members, n))
-    deficient = np.zeros(members, dtype=int)
-    step = max(1, COUNTS_AT_ONCE // n)
-    for start in range(0, counts.shape[0], step):
-        rows = counts[start : start + step, units]
-        bad_levels = distinct_levels(rows, level_index)[:, None] < np.asarray(parameters)[None, :]
-        for part, residual in problem.refit(rows):
-            bad = np.isnan(residual).any(axis=2) | bad_levels[part]
-            deficient += bad.sum(axis=0)
-            use = (rows[part] == 0)[:, None, :] & ~bad[:, :, None]
-            total += np.where(use, residual**2, 0.0).sum(axis=0)
-            number += use.sum(axis=0)
+    deficient, draws, left_out = np.zeros(members, dtype=int), 0, np.zeros(n, dtype=int)
+    step = max(1, RESIDUALS_AT_ONCE // (n * members))
+    for block in counts:
+        for start in range(0, block.shape[0], step):
+            rows = block[start : start + step, units]
+            levels = distinct_levels(rows, level_index)
+            residual = problem.refit(rows, levels)
+            sound = ~np.isnan(residual[:, 0]) & (levels[None, :] >= sizes[:, None])
+            undrawn = (rows == 0).T.astype(float)
+            residual.transpose(0, 2, 1)[~sound] = 0.0
+            total += np.einsum("pnd,pnd,nd->pn", residual, residual, undrawn)
+            number += sound.astype(float) @ undrawn.T
+            deficient += (~sound).sum(axis=1)
+            left_out += undrawn.sum(axis=1).astype(int)
+            draws += rows.shape[0]
     with np.errstate(invalid="ignore", divide="ignore"):
         squared = np.where(number > 0, total / number, np.nan)
-    squared[deficient > LARGEST_FAILED_SHARE * counts.shape[0]] = np.nan
-    return BootstrapErrors(squared, deficient, (counts == 0).sum(axis=0)[units])
+    squared[deficient > LARGEST_FAILED_SHARE * draws] = np.nan
+    return BootstrapErrors(squared, deficient, left_out, draws)
 
 
 def distinct_levels(rows: np.ndarray, level_index: np.ndarray) -> np.ndarray:

@@ -174,6 +174,7 @@ def variance_components(
     root_weights: np.ndarray,
     level_index: np.ndarray,
     series_index: np.ndarray,
+    direction_index: np.ndarray | None = None,
 ) -> Components:
     """Variance components by the method of moments (Searle, Casella & McCulloch, Variance Components, 1992, ch. 5).
 
@@ -183,13 +184,16 @@ def variance_components(
     design : ndarray of shape (n, p)
     root_weights : ndarray of shape (n,)
     level_index, series_index : ndarray of shape (n,), int
+    direction_index : ndarray of shape (n,), int, or None
+        Where given, repeatability is the scatter within level, series and direction.
 
     Returns
     -------
     Components
     """
     pure, pure_df = _within(residual, root_weights, level_index)
-    cells = np.unique(level_index * (series_index.max() + 1) + series_index, return_inverse=True)[1]
+    direction = np.zeros_like(level_index) if direction_index is None else direction_index
+    cells = np.unique(np.stack([level_index, series_index, direction]), axis=1, return_inverse=True)[1].ravel()
     repeat, repeat_df = _within(residual, root_weights, cells)
     pure_variance = pure / pure_df if pure_df else np.nan
     repeat_variance = repeat / repeat_df if repeat_df else np.nan
@@ -199,6 +203,56 @@ def variance_components(
     series_deviation = np.nan if effect is None else effect.deviation
     repeatability, pure_error, level_deviation = np.sqrt([repeat_variance, pure_variance, level_variance]).tolist()
     return Components(repeatability, float(series_deviation), pure_error, level_deviation)
+
+
+@dataclass(frozen=True)
+class DirectionDifference:
+    """Rising less falling at the levels that were met both ways.
+
+    Attributes
+    ----------
+    difference : ndarray of shape (L,)
+        In the unit of the residuals; nan at a level that was met one way only.
+    f, p : float
+        Ratio of the mean square of the differences to the scatter within level and direction, and its probability.
+    """
+
+    difference: np.ndarray
+    f: float
+    p: float
+
+
+def direction_difference(
+    residual: np.ndarray, root_weights: np.ndarray, level_index: np.ndarray, falling: np.ndarray
+) -> DirectionDifference | None:
+    """Difference of the two directions at each level (one-way analysis of variance within levels).
+
+    Parameters
+    ----------
+    residual : ndarray of shape (n,)
+    root_weights : ndarray of shape (n,)
+    level_index : ndarray of shape (n,), int
+    falling : ndarray of shape (n,), int
+        1 for falling, 0 for rising.
+
+    Returns
+    -------
+    DirectionDifference or None
+        None where no level was met both ways or no scatter is left to compare with.
+    """
+    count = int(level_index.max()) + 1
+    sums = [np.bincount(level_index, root_weights**2 * residual * (falling == way), minlength=count) for way in (0, 1)]
+    weights = [np.bincount(level_index, root_weights**2 * (falling == way), minlength=count) for way in (0, 1)]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        difference = sums[0] / weights[0] - sums[1] / weights[1]
+        between = weights[0] * weights[1] / (weights[0] + weights[1]) * difference**2
+    both = np.isfinite(difference)
+    scatter, left = _within(residual, root_weights, np.unique(2 * level_index + falling, return_inverse=True)[1])
+    if not both.any() or left < 1:
+        return None
+    mean_square = float(between[both].sum()) / int(both.sum())
+    f = mean_square / (scatter / left) if scatter > 0 else (np.inf if mean_square > 0 else 0.0)
+    return DirectionDifference(difference, float(f), float(stats.f.sf(f, int(both.sum()), left)))
 
 
 def level_variance_component(

@@ -13,14 +13,15 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg import solve_triangular
 
+from fitlib.numerics.nested import solve_nested
+
 #: A design with a larger condition number in the scaled basis is treated as rank deficient.
 LARGEST_CONDITION = 1e12
-#: Below this smallest eigenvalue of I - H_BB a left-out block is refitted rather than updated in closed form, so that
-#: cancellation cannot eat more than about four digits.
-SMALLEST_BLOCK_EIGENVALUE = 1e-4
+#: Problems with a smaller relative pivot are refitted by QR: normal equations lose digits there.
+SMALLEST_PIVOT = 1e-2
 #: Below this pivot a left-out block of a resample is taken to leave the member undetermined.
-SMALLEST_RESAMPLED_PIVOT = 1e-9
-#: Doubles held at once by the batched refits; blocks of draws are cut to it, results do not depend on it.
+SMALLEST_RESAMPLED_PIVOT = 1e-6
+#: Doubles held at once by batched problems; results do not depend on it.
 BLOCK_DOUBLES = 4_000_000
 
 
@@ -53,22 +54,6 @@ class LinearFit:
     message: str = ""
 
 
-@dataclass(frozen=True)
-class HeldOut:
-    """Residuals of observations left out of the fit.
-
-    Attributes
-    ----------
-    residual : ndarray of shape (members, n)
-        Unweighted; nan for observations that were in no block or whose block failed.
-    failed : ndarray of shape (members, blocks), bool
-        Blocks without which the member's coefficients are not determined.
-    """
-
-    residual: np.ndarray
-    failed: np.ndarray
-
-
 class LinearProblem:
     """All members of one nested linear family on one dataset.
 
@@ -95,6 +80,8 @@ class LinearProblem:
         self._q, self._r = np.linalg.qr(self._weighted)
         self._z = self._q.T @ self._weighted_target
         self._rows = rows
+        self._largest = self._largest_sound()
+        self._rests = self._residuals_of_all_sizes()
 
     def fit(self) -> tuple[LinearFit, ...]:
         """Fit every member.
@@ -137,97 +124,140 @@ class LinearProblem:
             condition_number=condition,
         )
 
-    def held_out(self, blocks: Sequence[np.ndarray]) -> HeldOut:
+    def residuals(self) -> np.ndarray:
+        """Residuals of all members on the fitted points, shape (members, n), unweighted; nan without a fit."""
+        out = np.full((len(self.sizes), self.design.shape[0]), np.nan)
+        for number, size in enumerate(self.sizes):
+            if size <= self._largest:
+                out[number] = self._rests[size - 1] / self.root_weights
+        return out
+
+    def _residuals_of_all_sizes(self) -> np.ndarray:
+        """Weighted residuals (largest, n) of the members with 1, 2, … parameters, from the largest downwards."""
+        q, z = self._q[:, : self._largest], self._z[: self._largest]
+        rests = np.empty((self._largest, q.shape[0]))
+        rest = self._weighted_target - q @ z
+        rest = rest - q @ (q.T @ rest)  # twice is enough (Björck 1996, sec. 2.4.5)
+        for size in range(self._largest, 0, -1):
+            rests[size - 1] = rest
+            rest = rest + q[:, size - 1] * z[size - 1]
+        return rests
+
+    def held_out(self, blocks: Sequence[np.ndarray], limits: np.ndarray | None = None) -> list[np.ndarray]:
         """Residuals of each block of observations when the block is left out of the fit.
 
-        In closed form from the one factorisation: ``r_B(held out) = (I - H_BB)^-1 r_B`` in the weighted scale
-        (Cook & Weisberg, Residuals and Influence in Regression, 1982, sec. 3.2 and eq. A.2.1 for a single case; the
-        block form follows from the same identity). Blocks near the limit of rank are refitted.
+        In closed form from the one factorisation: in the basis ``Q`` the normal matrix without block B is
+        ``I - Q_B^T Q_B`` and the right-hand side ``Q^T y - Q_B^T y_B`` (the block form of Cook & Weisberg, Residuals
+        and Influence in Regression, 1982, eq. A.2.1). Blocks near the limit of rank are refitted by QR.
 
         Parameters
         ----------
         blocks : sequence of ndarray of int
-            Row numbers of each block; blocks do not overlap.
+            Row numbers of each block; blocks may overlap.
+        limits : ndarray of shape (blocks,), int, or None
+            Largest member that each block can leave determined, where the caller knows it.
 
         Returns
         -------
-        HeldOut
+        list of ndarray of shape (members, rows of the block)
+            Unweighted residuals; nan for a member that is not determined without the block.
         """
-        residual = np.full((len(self.sizes), self.design.shape[0]), np.nan)
-        failed = np.zeros((len(self.sizes), len(blocks)), dtype=bool)
-        for member, size in enumerate(self.sizes):
-            if size > self._rows or not _condition(self._r[:size, :size]) < LARGEST_CONDITION:
-                failed[member] = True
-                continue
-            weighted = self._weighted_residual(size)
-            for numbers in _by_length(blocks):
-                rows = np.stack([blocks[number] for number in numbers])
-                values, smallest = _leave_blocks_out(self._q[:, :size], weighted, rows)
-                for place, number in enumerate(numbers):
-                    if smallest[place] < SMALLEST_BLOCK_EIGENVALUE:
-                        values[place], failed[member, number] = self._refit_without(blocks[number], size)
-                residual[member, rows] = values / self.root_weights[rows]
-        return HeldOut(residual, failed)
+        out = [np.full((len(self.sizes), block.size), np.nan) for block in blocks]
+        if self._largest == 0:
+            return out
+        limits = np.full(len(blocks), self._largest) if limits is None else np.minimum(limits, self._largest)
+        for numbers in _in_batches(blocks, self._largest):
+            rows = np.stack([blocks[number] for number in numbers])
+            values = self._without(rows, limits[numbers])
+            for place, number in enumerate(numbers):
+                out[number] = values[place]
+        return out
 
-    def _weighted_residual(self, size: int) -> np.ndarray:
-        q = self._q[:, :size]
-        residual = self._weighted_target - q @ self._z[:size]
-        return residual - q @ (q.T @ residual)  # twice is enough (Björck 1996, sec. 2.4.5)
+    def _largest_sound(self) -> int:
+        """Largest member that all observations together determine."""
+        sound = [size for size in self.sizes if size <= self._rows and self._sound(size)]
+        return max(sound, default=0)
 
-    def _refit_without(self, block: np.ndarray, size: int) -> tuple[np.ndarray, bool]:
+    def _sound(self, size: int) -> bool:
+        return _condition(self._r[:size, :size]) < LARGEST_CONDITION
+
+    def _without(self, rows: np.ndarray, limits: np.ndarray) -> np.ndarray:
+        """Residuals (blocks, members, rows) of blocks of equal length."""
+        sizes = np.array(self.sizes)
+        place = np.minimum(sizes, self._largest) - 1
+        block = self._q[rows][:, :, : self._largest]
+        normal = np.eye(self._largest)[:, :, None] - np.einsum("bri,brj->ijb", block, block)
+        right = -np.einsum("brj,br->jb", block, self._rests[-1][rows])
+        solved = solve_nested(normal, right, self._z[: self._largest], np.ones((self._largest, 1)))
+        change = np.einsum("brm,pmb->bpr", block, solved.changes[place])
+        held = (self._rests[place][:, rows].transpose(1, 0, 2) - change) / self.root_weights[rows][:, None, :]
+        within = sizes[:, None] <= limits[None, :]
+        held[~within.T] = np.nan
+        weak = within & (solved.smallest_pivot[place] < SMALLEST_PIVOT)
+        for number in np.flatnonzero(weak.any(axis=0)):
+            self._refit_weak(held[number], rows[number], weak[:, number])
+        return held
+
+    def _refit_weak(self, out: np.ndarray, block: np.ndarray, weak: np.ndarray) -> None:
         keep = np.ones(self.design.shape[0], dtype=bool)
         keep[block] = False
-        if keep.sum() < size:
-            return np.full(block.size, np.nan), True
-        part = LinearProblem(self.design[keep, :size], self.target[keep], self.root_weights[keep], (size,))
-        fit = part.fit()[0]
-        if fit.message:
-            return np.full(block.size, np.nan), True
-        held = self.target[block] - self.design[block, :size] @ fit.coefficients
-        return held * self.root_weights[block], False
+        sizes = [size for size, bad in zip(self.sizes, weak, strict=True) if bad]
+        if not keep.any():
+            out[weak] = np.nan
+            return
+        part = LinearProblem(self.design[keep][:, : max(sizes)], self.target[keep], self.root_weights[keep], sizes)
+        for number, fit in zip(np.flatnonzero(weak), part.fit(), strict=True):
+            size = self.sizes[number]
+            out[number] = self.target[block] - self.design[block, :size] @ fit.coefficients
 
-    def refit(self, counts: np.ndarray) -> Iterator[tuple[slice, np.ndarray]]:
-        """Residuals of all observations for fits to resamples, in blocks of draws of bounded memory.
+    def refit(self, counts: np.ndarray, limits: np.ndarray | None = None) -> np.ndarray:
+        """Residuals of all observations for fits to resamples.
 
         Parameters
         ----------
         counts : ndarray of shape (draws, n), int
             How often each observation is in each draw.
+        limits : ndarray of shape (draws,), int, or None
+            Largest member that each draw can determine, where the caller knows it.
 
-        Yields
-        ------
-        draws : slice
-            The draws that this block covers.
-        residual : ndarray of shape (draws in the block, members, n)
+        Returns
+        -------
+        ndarray of shape (members, n, draws)
             Unweighted residuals of every observation, drawn or not; nan where the draw does not determine the member.
         """
-        n, largest = self.design.shape
-        step = max(1, BLOCK_DOUBLES // (n * max(largest, 1) * 4))
-        for start in range(0, counts.shape[0], step):
-            part = slice(start, min(start + step, counts.shape[0]))
-            yield part, self._refit_block(counts[part])
-
-    def _refit_block(self, counts: np.ndarray) -> np.ndarray:
-        largest = min(max(self.sizes), self.design.shape[0])
-        root = np.sqrt(counts)
-        weighted = self._weighted[None, :, :largest] * root[:, :, None]
-        q, r = np.linalg.qr(weighted)
-        z = np.einsum("dnp,dn->dp", q, self._weighted_target * root)
-        prediction = _nested_predictions(self.design[:, :largest], r, z, np.linalg.norm(weighted, axis=1))
-        out = np.full((counts.shape[0], len(self.sizes), self.design.shape[0]), np.nan)
-        for member, size in enumerate(self.sizes):
-            if size <= largest:
-                out[:, member] = self.target - prediction[:, size - 1]
+        sizes = np.array(self.sizes)
+        out = np.full((sizes.size, self.design.shape[0], counts.shape[0]), np.nan)
+        if self._largest == 0:
+            return out
+        limits = np.full(counts.shape[0], self._largest) if limits is None else np.minimum(limits, self._largest)
+        place = np.minimum(sizes, self._largest) - 1
+        normal, right = self._normal_of(counts)
+        solved = solve_nested(normal, right, self._z[: self._largest], normal[np.diag_indices(self._largest)])
+        change = self._q[:, : self._largest] @ solved.changes[place]
+        np.subtract(self._rests[place][:, :, None], change, out=out)
+        out /= self.root_weights[:, None]
+        within = sizes[:, None] <= limits[None, :]
+        weak = within & (solved.smallest_pivot[place] < SMALLEST_PIVOT)
+        out.transpose(0, 2, 1)[~within] = np.nan
+        draws = np.flatnonzero(weak.any(axis=0))
+        if draws.size:
+            again = self._refit_by_qr(counts[draws])
+            out.transpose(0, 2, 1)[weak] = again.transpose(0, 2, 1)[weak[:, draws]]
         return out
 
-    def resampled_held_out(
-        self, counts: np.ndarray, blocks: Sequence[np.ndarray]
-    ) -> Iterator[tuple[slice, np.ndarray]]:
-        """Held-out residuals of each block within each resample, for repeating a whole selection on resamples.
+    def _normal_of(self, counts: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """Normal matrices (P, P, draws) and right-hand sides (P, draws) of draws, in the basis of all observations."""
+        return self._weigh(np.arange(self.design.shape[0]), counts)
 
-        In the basis ``Q`` of a draw the normal matrix without block B is ``I - Q_B^T Q_B``. Its Cholesky factor is
-        nested like ``R``, so that one factorisation per draw and block serves all members (Golub & Van Loan, 4th ed.,
-        sec. 4.2.3 and 6.5.4).
+    def _weigh(self, rows: np.ndarray, counts: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        q = self._q[rows, : self._largest]
+        products = (q[:, :, None] * q[:, None, :]).reshape(rows.size, -1)
+        weights = counts.T.astype(float)
+        normal = (products.T @ weights).reshape(self._largest, self._largest, counts.shape[0])
+        return normal, (q * self._rests[-1][rows, None]).T @ weights
+
+    def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
+        """Held-out residuals of each block within each resample, for repeating a whole selection on resamples.
 
         Parameters
         ----------
@@ -235,63 +265,38 @@ class LinearProblem:
         blocks : sequence of ndarray of int
             Together they hold every observation once.
 
-        Yields
-        ------
-        draws : slice
-        residual : ndarray of shape (draws in the block, members, n)
+        Returns
+        -------
+        ndarray of shape (members, n, draws)
             Unweighted; nan where the rest of the draw does not determine the member.
         """
-        n, largest = self.design.shape
-        step = max(1, BLOCK_DOUBLES // (n * max(largest, 1) * 4))
-        for start in range(0, counts.shape[0], step):
-            part = slice(start, min(start + step, counts.shape[0]))
-            yield part, self._resampled_block(counts[part], blocks)
-
-    def _resampled_block(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
-        largest = min(max(self.sizes), self.design.shape[0])
-        root = np.sqrt(counts)
-        weighted = self._weighted[None, :, :largest] * root[:, :, None]
-        target = self._weighted_target * root
-        q, r = np.linalg.qr(weighted)
-        z = np.einsum("dnp,dn->dp", q, target)
-        # Rank already lost in the draw as a whole: q then holds arbitrary directions
-        pivots = np.abs(np.diagonal(r, axis1=1, axis2=2))
-        norms = np.maximum(np.linalg.norm(weighted, axis=1), np.finfo(float).tiny)
-        sound = np.logical_and.accumulate(pivots > norms * 100 / LARGEST_CONDITION, axis=1)
-        out = np.full((counts.shape[0], len(self.sizes), self.design.shape[0]), np.nan)
+        sizes = np.array(self.sizes)
+        out = np.full((sizes.size, self.design.shape[0], counts.shape[0]), np.nan)
+        if self._largest == 0:
+            return out
+        place = np.minimum(sizes, self._largest) - 1
+        normal, right = self._normal_of(counts)
+        whole = normal[np.diag_indices(self._largest)]
         for rows in blocks:
-            held = _nested_held_out(q[:, rows], z, target[:, rows], sound)
-            with np.errstate(divide="ignore", invalid="ignore"):
-                held = held / (root[:, None, rows] * self.root_weights[rows])
-            for member, size in enumerate(self.sizes):
-                if size <= largest:
-                    out[:, member, rows] = held[:, size - 1]
+            part, part_right = self._weigh(rows, counts[:, rows])
+            solved = solve_nested(normal - part, right - part_right, self._z[: self._largest], whole)
+            held = self._rests[place][:, rows, None] - self._q[rows, : self._largest] @ solved.changes[place]
+            weak = (solved.smallest_pivot[place] < SMALLEST_RESAMPLED_PIVOT) | (sizes > self._largest)[:, None]
+            held.transpose(0, 2, 1)[weak] = np.nan
+            out[:, rows] = held / self.root_weights[rows, None]
         return out
 
-
-def _nested_held_out(block: np.ndarray, z: np.ndarray, target: np.ndarray, sound: np.ndarray) -> np.ndarray:
-    """Weighted held-out residuals, shape (draws, largest, rows), by a Cholesky factor built column by column."""
-    draws, rows, largest = block.shape
-    normal = np.eye(largest) - block.transpose(0, 2, 1) @ block
-    right = z - np.einsum("drp,dr->dp", block, target)
-    factor = np.zeros_like(normal)
-    t = np.zeros((draws, largest))
-    v = np.zeros((draws, largest, rows))
-    prediction = np.zeros((draws, largest, rows))
-    fine = np.ones(draws, dtype=bool)
-    for j in range(largest):
-        row = factor[:, j, :j]
-        pivot = normal[:, j, j] - np.einsum("dk,dk->d", row, row)
-        fine = fine & sound[:, j] & (pivot > SMALLEST_RESAMPLED_PIVOT)
-        root = np.sqrt(np.where(fine, pivot, 1.0))
-        factor[:, j, j] = root
-        below = normal[:, j + 1 :, j] - np.einsum("dik,dk->di", factor[:, j + 1 :, :j], row)
-        factor[:, j + 1 :, j] = below / root[:, None]
-        t[:, j] = (right[:, j] - np.einsum("dk,dk->d", row, t[:, :j])) / root
-        v[:, j] = (block[:, :, j] - np.einsum("dk,dkr->dr", row, v[:, :j])) / root[:, None]
-        prediction[:, j] = (prediction[:, j - 1] if j else 0.0) + v[:, j] * t[:, j, None]
-        prediction[~fine, j] = np.nan
-    return target[:, None, :] - prediction
+    def _refit_by_qr(self, counts: np.ndarray) -> np.ndarray:
+        largest = self._largest
+        root = np.sqrt(counts)
+        weighted = self._weighted[None, :, :largest] * root[:, :, None]
+        q, r = np.linalg.qr(weighted)
+        z = np.einsum("dnp,dn->dp", q, self._weighted_target * root)
+        prediction = _nested_predictions(self.design[:, :largest], r, z, np.linalg.norm(weighted, axis=1))
+        sizes = np.minimum(np.array(self.sizes), largest)
+        out = self.target[None, :, None] - prediction[:, sizes - 1].transpose(1, 2, 0)
+        out[np.array(self.sizes) > largest] = np.nan
+        return out
 
 
 def _nested_predictions(design: np.ndarray, r: np.ndarray, z: np.ndarray, norms: np.ndarray) -> np.ndarray:
@@ -312,29 +317,14 @@ def _nested_predictions(design: np.ndarray, r: np.ndarray, z: np.ndarray, norms:
     return prediction
 
 
-def _leave_blocks_out(q: np.ndarray, weighted: np.ndarray, rows: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Held-out weighted residuals of blocks of equal length, and the smallest eigenvalue of each ``I - H_BB``."""
-    block = q[rows]
-    residual = weighted[rows]
-    if rows.shape[1] <= q.shape[1]:
-        matrix = np.eye(rows.shape[1]) - block @ block.transpose(0, 2, 1)
-        smallest = np.linalg.eigvalsh(matrix)[:, 0]
-        safe = np.where((smallest < SMALLEST_BLOCK_EIGENVALUE)[:, None, None], np.eye(rows.shape[1]), matrix)
-        return np.linalg.solve(safe, residual[:, :, None])[:, :, 0], smallest
-    # Woodbury: (I - B B^T)^-1 = I + B (I - B^T B)^-1 B^T, the smaller matrix when a block is longer than p.
-    matrix = np.eye(q.shape[1]) - block.transpose(0, 2, 1) @ block
-    smallest = np.linalg.eigvalsh(matrix)[:, 0]
-    safe = np.where((smallest < SMALLEST_BLOCK_EIGENVALUE)[:, None, None], np.eye(q.shape[1]), matrix)
-    inner = np.linalg.solve(safe, block.transpose(0, 2, 1) @ residual[:, :, None])
-    return residual + (block @ inner)[:, :, 0], smallest
-
-
-def _by_length(blocks: Sequence[np.ndarray]) -> list[list[int]]:
-    groups: dict[int, list[int]] = {}
-    for number, block in enumerate(blocks):
-        if block.size:
-            groups.setdefault(block.size, []).append(number)
-    return list(groups.values())
+def _in_batches(blocks: Sequence[np.ndarray], largest: int) -> Iterator[np.ndarray]:
+    """Numbers of blocks of equal length, few enough at a time to bound the memory."""
+    lengths = np.array([block.size for block in blocks], dtype=int)
+    for length in np.unique(lengths[lengths > 0]):
+        numbers = np.flatnonzero(lengths == length)
+        step = max(1, BLOCK_DOUBLES // (4 * max(largest, 1) * (max(largest, 1) + int(length))))
+        for start in range(0, numbers.size, step):
+            yield numbers[start : start + step]
 
 
 def _condition(r: np.ndarray) -> float:

@@ -8,13 +8,16 @@ import numpy as np
 from scipy import stats
 
 from fitlib.numerics.diagnostics import information_criteria
+from fitlib.numerics.gains import LEAST_STANDARD_ERRORS, Gain, damped_weights, gain, simplest_unbeaten
 from fitlib.numerics.validation import standard_error
 
 #: Losses and criteria that differ by less than this, relative, are not told apart on every machine.
 RELATIVE_MARGIN = 1e-8
 
-LOSS_RULES = ("one_standard_error", "smallest_loss")
+LOSS_RULES = ("supported_gain", "one_standard_error", "smallest_loss")
 LEVEL_RULES = ("f_test", "aicc", "bic")
+#: Rules that look at the fits to the level means.
+FIT_RULES = (*LEVEL_RULES, "supported_gain")
 
 
 @dataclass(frozen=True)
@@ -31,6 +34,28 @@ class Evidence:
         Weighted sum of squares of the level means about each fit.
     floor : float
         Losses below it count as equal.
+    """
+
+    parameters: np.ndarray
+    level_losses: np.ndarray
+    level_weights: np.ndarray
+    level_squares: np.ndarray
+    floor: float = 0.0
+
+
+@dataclass(frozen=True)
+class ManyEvidence:
+    """Evidence of many resamples.
+
+    Attributes
+    ----------
+    parameters : ndarray of shape (m,), int
+    level_losses : ndarray of shape (m, L, draws)
+        nan where a draw does not judge a candidate, anything finite at a level that was not drawn.
+    level_weights : ndarray of shape (L, draws)
+        0 for a level that was not drawn.
+    level_squares : ndarray of shape (m, draws)
+    floor : float
     """
 
     parameters: np.ndarray
@@ -73,10 +98,10 @@ def choose(evidence: Evidence, rule: str, eligible: np.ndarray, alpha: float = 0
     Parameters
     ----------
     evidence : Evidence
-    rule : {"one_standard_error", "smallest_loss", "f_test", "aicc", "bic"}
+    rule : {"supported_gain", "one_standard_error", "smallest_loss", "f_test", "aicc", "bic"}
     eligible : ndarray of shape (m,), bool
     alpha : float
-        Of the F test.
+        Of the F test of ``f_test`` and ``supported_gain``.
 
     Returns
     -------
@@ -120,6 +145,144 @@ def take(evidence: Evidence, rule: str, eligible: np.ndarray, alpha: float = 0.0
     return _take(evidence, values, rule, eligible & ~np.isnan(values), alpha)
 
 
+def take_many(evidence: ManyEvidence, rule: str, eligible: np.ndarray, alpha: float = 0.05) -> np.ndarray:
+    """What a rule takes in each of many resamples.
+
+    Parameters
+    ----------
+    evidence : ManyEvidence
+    rule : str
+    eligible : ndarray of shape (m,), bool
+    alpha : float
+
+    Returns
+    -------
+    ndarray of shape (draws,), int
+        -1 where the rule takes nothing.
+    """
+    if rule == "supported_gain":
+        return _take_supported(evidence, eligible, alpha)
+    if rule in LOSS_RULES:
+        return _take_by_loss(evidence, rule, eligible)
+    positions = np.full(evidence.level_weights.shape[1], -1)
+    for draw in range(positions.size):
+        drawn = evidence.level_weights[:, draw] > 0
+        one = Evidence(
+            evidence.parameters,
+            evidence.level_losses[:, drawn, draw],
+            evidence.level_weights[drawn, draw],
+            evidence.level_squares[:, draw],
+            evidence.floor,
+        )
+        position = take(one, rule, eligible, alpha)
+        positions[draw] = -1 if position is None else position
+    return positions
+
+
+def _take_by_loss(evidence: ManyEvidence, rule: str, eligible: np.ndarray) -> np.ndarray:
+    weights = evidence.level_weights / np.maximum(evidence.level_weights.sum(axis=0), np.finfo(float).tiny)
+    loss = np.einsum("mld,ld->md", evidence.level_losses, weights)
+    loss[~eligible] = np.nan
+    value = np.where(np.isnan(loss), np.inf, loss)
+    best, draws = np.argmin(value, axis=0), np.arange(value.shape[1])
+    limit = np.maximum(value[best, draws], evidence.floor)
+    if rule == "one_standard_error":
+        levels = (weights > 0).sum(axis=0)
+        difference = evidence.level_losses[best, :, draws].T - value[best, draws]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            error = np.sqrt(levels / (levels - 1) * np.einsum("ld,ld->d", weights**2, difference**2))
+        limit = np.maximum(limit, value[best, draws] + np.nan_to_num(error, posinf=0.0))
+    within = value <= limit
+    return simplest_unbeaten(
+        np.zeros((eligible.size, eligible.size, 1), dtype=bool), value, evidence.parameters, within & np.isfinite(value)
+    )
+
+
+def _take_supported(evidence: ManyEvidence, eligible: np.ndarray, alpha: float) -> np.ndarray:
+    weights = damped_weights(evidence.level_weights)
+    losses = np.einsum("mld,ld->md", evidence.level_losses, weights)
+    usable = eligible[:, None] & ~np.isnan(losses)
+    order = np.flatnonzero(eligible)
+    supported = np.zeros((eligible.size, eligible.size, weights.shape[1]), dtype=bool)
+    for k in order:
+        for j in order:
+            if evidence.parameters[j] > evidence.parameters[k]:
+                supported[k, j] = _gain(evidence, weights, k, j).supported(alpha)
+    return simplest_unbeaten(supported, losses, evidence.parameters, usable)
+
+
+def _gain(evidence: ManyEvidence, weights: np.ndarray, simpler: int, richer: int) -> Gain:
+    pair = (simpler, richer)
+    return gain(
+        evidence.level_losses[simpler],
+        evidence.level_losses[richer],
+        weights,
+        tuple(evidence.level_squares[k] for k in pair),
+        tuple(int(evidence.parameters[k]) for k in pair),
+        (evidence.floor, evidence.floor * evidence.level_weights.sum(axis=0)),
+    )
+
+
+def deciding_gains(
+    evidence: Evidence, choice: Choice, eligible: np.ndarray, alpha: float
+) -> dict[int, tuple[int, Gain]]:
+    """What decided against each candidate under ``supported_gain``.
+
+    Parameters
+    ----------
+    evidence : Evidence
+    choice : Choice
+    eligible : ndarray of shape (m,), bool
+    alpha : float
+
+    Returns
+    -------
+    dict of int to (int, Gain)
+        For a candidate over which a richer one has a supported gain: that one (the chosen, if it is one of them) and
+        its gain. For a richer one than the
+        chosen: itself and its gain over the chosen. None for one with as many parameters as the chosen.
+    """
+    found: dict[int, tuple[int, Gain]] = {}
+    usable = [int(k) for k in np.flatnonzero(eligible) if np.isfinite(choice.values[k])]
+    for k in usable:
+        richer = [j for j in usable if evidence.parameters[j] > evidence.parameters[k]]
+        gains = [(j, gain_between(evidence, k, j)) for j in richer]
+        better = [item for item in gains if item[1].supported(alpha)[0]]
+        if better and k != choice.chosen:
+            found[k] = max(better, key=lambda item: (item[0] == choice.chosen, item[1].standard_errors[0]))
+        elif evidence.parameters[k] > evidence.parameters[choice.chosen]:
+            found[k] = (k, gain_between(evidence, choice.chosen, k))
+    return found
+
+
+def _as_many(evidence: Evidence) -> ManyEvidence:
+    return ManyEvidence(
+        evidence.parameters,
+        np.asarray(evidence.level_losses, dtype=float)[:, :, None],
+        np.asarray(evidence.level_weights, dtype=float)[:, None],
+        np.asarray(evidence.level_squares, dtype=float)[:, None],
+        evidence.floor,
+    )
+
+
+def gain_between(evidence: Evidence, simpler: int, richer: int) -> Gain:
+    """Gain of a richer candidate over a simpler one on all used observations.
+
+    Parameters
+    ----------
+    evidence : Evidence
+    simpler, richer : int
+        Numbers of the candidates.
+
+    Returns
+    -------
+    Gain
+        Arrays of shape (1,).
+    """
+    many = _as_many(evidence)
+    return _gain(many, damped_weights(many.level_weights), simpler, richer)
+
+
 def _values(evidence: Evidence, rule: str) -> np.ndarray:
     if rule in LOSS_RULES:
         return evidence.level_losses @ evidence.level_weights / evidence.level_weights.sum()
@@ -138,6 +301,9 @@ def _take(evidence: Evidence, values: np.ndarray, rule: str, open_to: np.ndarray
         return None
     if rule == "f_test":
         return _backward(evidence, open_to, alpha)
+    if rule == "supported_gain":
+        position = int(_take_supported(_as_many(evidence), open_to, alpha)[0])
+        return None if position < 0 else position
     limit = _least(values, open_to, evidence.floor)
     if rule == "one_standard_error":
         limit = max(limit, _threshold(evidence, values, open_to))
@@ -198,6 +364,8 @@ def _tied(evidence, values, rule, open_to, taken, alpha) -> tuple[int, ...]:
     others = [int(k) for k in np.flatnonzero(open_to) if k != taken]
     if rule == "f_test":
         return tuple(k for k in others if _flips_f_test(evidence, open_to, k, taken, alpha))
+    if rule == "supported_gain":
+        return tuple(k for k in others if _gain_tie(evidence, values, k, taken, alpha))
     if rule in LEVEL_RULES:
         return tuple(k for k in others if _close(values[k], values[taken]))
     limit = _threshold(evidence, values, open_to) if rule == "one_standard_error" else np.inf
@@ -234,6 +402,14 @@ def paired_standard_error(evidence: Evidence, first: int, second: int) -> float:
     """
     difference = evidence.level_losses[first] - evidence.level_losses[second]
     return float(standard_error(difference[None, :], evidence.level_weights)[0])
+
+
+def _gain_tie(evidence: Evidence, values: np.ndarray, other: int, taken: int, alpha: float) -> bool:
+    if evidence.parameters[other] == evidence.parameters[taken]:
+        return _loss_tie(evidence, values, np.inf, other, taken)
+    pair = sorted((other, taken), key=lambda k: evidence.parameters[k])
+    found = gain_between(evidence, *pair)
+    return _close(found.standard_errors[0], LEAST_STANDARD_ERRORS) or _close(found.p[0], alpha)
 
 
 def _flips_f_test(evidence: Evidence, open_to: np.ndarray, other: int, taken: int, alpha: float) -> bool:

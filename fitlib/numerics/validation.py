@@ -136,27 +136,30 @@ def scheme_errors(
     SchemeErrors
     """
     members, n = len(parameters), level_index.size
-    total = np.zeros((members, n))
+    sizes = np.asarray(parameters)
+    limits = _levels_kept(folds, level_index)
+    held = problem.held_out([fold.rows for fold in folds], limits)
+    total, visits = np.zeros((members, n)), np.zeros(n)
     fold_loss = np.full((members, len(folds)), np.nan)
     failed = np.zeros((members, len(folds)), dtype=bool)
-    repeats = sorted({fold.repeat for fold in folds})
-    for repeat in repeats:
-        numbers = [k for k, fold in enumerate(folds) if fold.repeat == repeat]
-        held = problem.held_out([folds[k].rows for k in numbers])
-        squared = held.residual**2
-        for place, k in enumerate(numbers):
-            bad = held.failed[:, place] | _levels_lost(folds[k].rows, level_index, parameters)
-            squared[np.ix_(bad, folds[k].rows)] = np.nan
-            failed[:, k] = bad
-            fold_loss[:, k] = weighted_mean(squared[:, folds[k].rows], root_weights[folds[k].rows] ** 2)
-        total += squared
-    return SchemeErrors(total / len(repeats), fold_loss, failed)
+    for number, (fold, residual) in enumerate(zip(folds, held, strict=True)):
+        squared = residual**2
+        total[:, fold.rows] += squared
+        visits[fold.rows] += 1
+        fold_loss[:, number] = weighted_mean(squared, root_weights[fold.rows] ** 2)
+        failed[:, number] = np.isnan(residual).any(axis=1) | (limits[number] < sizes)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return SchemeErrors(total / visits, fold_loss, failed)
 
 
-def _levels_lost(rows: np.ndarray, level_index: np.ndarray, parameters: Sequence[int]) -> np.ndarray:
-    kept = np.ones(level_index.size, dtype=bool)
-    kept[rows] = False
-    return np.unique(level_index[kept]).size < np.asarray(parameters)
+def _levels_kept(folds: Sequence[Fold], level_index: np.ndarray) -> np.ndarray:
+    """Number of levels that each fold keeps in."""
+    sizes = np.bincount(level_index)
+    kept = np.empty(len(folds), dtype=int)
+    for number, fold in enumerate(folds):
+        levels, counts = np.unique(level_index[fold.rows], return_counts=True)
+        kept[number] = sizes.size - np.count_nonzero(counts == sizes[levels])
+    return kept
 
 
 def weighted_mean(values: np.ndarray, weights: np.ndarray) -> np.ndarray:

@@ -165,7 +165,7 @@ def _selection(proposal: Proposal) -> list[str]:
     return [
         "selection:",
         "  loss: leave_one_level_out",
-        "  rule: one_standard_error  # the simplest candidate within one standard error of the smallest loss",
+        "  rule: supported_gain  # the simplest candidate over which no gain of one with more parameters is supported",
         f"  # inverse evaluation needs a strictly monotone function; here the response {trend} with it overall",
         f"  require: {{monotone: true, degrees_of_freedom: {freedom}}}",
         "  # target_uncertainty: {expanded: ..., coverage_factor: 2}  # what you need, in the unit of the stimulus",

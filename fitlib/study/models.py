@@ -34,7 +34,8 @@ FORMAT = 1
 LARGEST_SEED = 2**53 - 1  # the largest whole number that every JSON reader keeps exactly
 WEIGHTINGS = ("none", "inverse_stimulus", "inverse_stimulus_squared")
 LATER_WEIGHTINGS = ("per_point", "estimated")
-RULES = ("smallest_loss", "one_standard_error", "f_test", "aicc", "bic")
+RULES = ("supported_gain", "one_standard_error", "smallest_loss", "f_test", "aicc", "bic")
+DEFAULT_RULE = RULES[0]
 
 Line = line_text()
 Word = line_text(100)
@@ -124,7 +125,7 @@ class SelectionGroup(Model):
     """How one candidate is chosen."""
 
     loss: Word | None = None
-    rule: choice(*RULES)
+    rule: choice(*RULES) = DEFAULT_RULE
     alpha: positive(below=1) | None = None
     require: RequireGroup = RequireGroup()
     target_uncertainty: TargetGroup | None = None

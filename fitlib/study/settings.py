@@ -144,7 +144,7 @@ class SelectionSettings:
     ----------
     loss : str or None
         Id of the scheme that decides; None for the rules that use none.
-    rule : {"smallest_loss", "one_standard_error", "f_test", "aicc", "bic"}
+    rule : {"supported_gain", "one_standard_error", "smallest_loss", "f_test", "aicc", "bic"}
     alpha : float
         Significance level of ``f_test``; other rules do not use it.
     monotone : bool

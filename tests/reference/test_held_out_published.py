@@ -68,7 +68,8 @@ def test_stopping_distance(case, agrees):
 
 def _press(design: np.ndarray, y: np.ndarray) -> float:
     problem = LinearProblem(design, y, np.ones(y.size), [design.shape[1]])
-    return float(np.sum(problem.held_out([np.array([row]) for row in range(y.size)]).residual ** 2))
+    held = problem.held_out([np.array([row]) for row in range(y.size)])
+    return float(sum(part.item() ** 2 for part in held))
 
 
 SUBSETS = ["".join(chosen) for size in range(1, 5) for chosen in itertools.combinations("1234", size)]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -53,14 +53,17 @@ class Problem(Protocol):
     def fit(self) -> Sequence:
         """One fit for each member."""
 
-    def held_out(self, blocks: Sequence[np.ndarray]):
-        """Residuals of blocks left out."""
+    def residuals(self) -> np.ndarray:
+        """Residuals (members, n) on the fitted points; nan without a fit."""
 
-    def refit(self, counts: np.ndarray) -> Iterator:
-        """Residuals for resamples."""
+    def held_out(self, blocks: Sequence[np.ndarray], limits: np.ndarray | None = None) -> list[np.ndarray]:
+        """Residuals (members, rows) of each block when it is left out; nan where a member is not determined."""
 
-    def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> Iterator:
-        """Residuals of blocks left out of each resample."""
+    def refit(self, counts: np.ndarray, limits: np.ndarray | None = None) -> np.ndarray:
+        """Residuals (members, n, draws) of all observations for fits to resamples."""
+
+    def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
+        """Residuals (members, n, draws) of blocks left out of each resample."""
 
 
 class Family(Protocol):

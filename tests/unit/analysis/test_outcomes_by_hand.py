@@ -113,7 +113,7 @@ def test_share_of_resamples_by_hand(made):
     result = made.run(study, made.observations(x, y, np.tile([1, 2, 3], 6), level=10.0 * level))
     assert all(item["eligible"] for item in result["candidates"])
     taken = {1: 0, 2: 0, 3: 0, None: 0}
-    for draw in draw_counts(12, ("LC-1", "bootstrap"), 6, 200):
+    for draw in np.concatenate(list(draw_counts(12, ("LC-1", "bootstrap"), 6, 200))):
         weights, drawn = draw[level], np.flatnonzero(draw)
         losses = {}
         for degree in (1, 2, 3):

@@ -83,6 +83,24 @@ def test_all_schemes_beside_each_other(made, rows):
     assert sum(shares) + result["selection"]["draws_without_choice"] / 40 == pytest.approx(1)
 
 
+@pytest.mark.parametrize("rule", ["one_standard_error", "aicc"])
+def test_draws_cut_into_blocks_give_the_same_result(made, rows, rule, monkeypatch):
+    """The same draws in blocks of three: the same folds, failures and shares; losses to rounding."""
+    study = made.study(validation=("leave_one_level_out", made.scheme("bootstrap", draws=100)), rule=rule, seed=4)
+    whole = made.run(study, rows)
+    monkeypatch.setattr("fitlib.analysis.streams.NUMBERS_AT_ONCE", 33)
+    parts = made.run(study, rows)
+    one, other = _schemes(whole)["bootstrap"], _schemes(parts)["bootstrap"]
+    assert one["rank_deficient_draws"] == other["rank_deficient_draws"]
+    assert [fold["draws"] for fold in one["folds"]] == [fold["draws"] for fold in other["folds"]]
+    for name, item in _by_name(whole).items():
+        again = _by_name(parts)[name]
+        assert item["bootstrap_share"] == again["bootstrap_share"]
+        assert again["losses"]["bootstrap"]["loss"] == pytest.approx(item["losses"]["bootstrap"]["loss"], rel=1e-12)
+    assert max(item["bootstrap_share"] for item in whole["candidates"]) > 0.5
+    assert whole["selection"] == parts["selection"]
+
+
 def test_level_folds_never_leave_a_replicate_behind(made, rows):
     folds = _schemes(made.run(made.study(), rows))["leave_one_level_out"]["folds"]
     assert {fold["observations"] for fold in folds} == {9}

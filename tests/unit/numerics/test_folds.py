@@ -116,15 +116,16 @@ def test_bootstrap_counts_draws_that_fail_and_withholds_the_loss():
     good[:, 0] = 0
     good[:, 4] = 2
     counts = np.concatenate([good, np.tile([0, 0, 3, 2, 0], (3, 1))])
-    outcome = bootstrap_errors(problem, parameters, counts, np.arange(5), np.arange(5))
+    outcome = bootstrap_errors(problem, parameters, [counts], np.arange(5), np.arange(5))
     line, bowed = parameters.index(2), parameters.index(3)
+    assert outcome.draws == 20
     assert outcome.rank_deficient[[line, bowed]].tolist() == [0, 3]
     assert np.isfinite(outcome.squared[line, [0, 1]]).all()
     assert np.isnan(outcome.squared[bowed]).all()
     assert outcome.left_out.tolist() == [20, 3, 0, 0, 3]
-    few = bootstrap_errors(problem, parameters, counts[:-1], np.arange(5), np.arange(5))
+    few = bootstrap_errors(problem, parameters, [counts[:-1]], np.arange(5), np.arange(5))
     assert few.rank_deficient[bowed] == 2 > LARGEST_FAILED_SHARE * 19
-    fewer = bootstrap_errors(problem, parameters, counts[:-2], np.arange(5), np.arange(5))
+    fewer = bootstrap_errors(problem, parameters, [counts[:-2]], np.arange(5), np.arange(5))
     assert fewer.rank_deficient[bowed] == 1 <= LARGEST_FAILED_SHARE * 18
     assert np.isfinite(fewer.squared[bowed, 0])
 
@@ -132,7 +133,7 @@ def test_bootstrap_counts_draws_that_fail_and_withholds_the_loss():
 def test_an_observation_in_every_draw_has_no_bootstrap_error():
     x = np.arange(4.0)
     problem, parameters = _problem(x, x, [1])
-    outcome = bootstrap_errors(problem, parameters, np.array([[1, 1, 2, 0]]), np.arange(4), np.arange(4))
+    outcome = bootstrap_errors(problem, parameters, [np.array([[1, 1, 2, 0]])], np.arange(4), np.arange(4))
     assert np.isnan(outcome.squared[0]).tolist() == [True, True, True, False]
 
 
@@ -146,5 +147,40 @@ def test_a_draw_of_two_scattered_levels_does_not_determine_a_quadratic():
     x = np.array([0.0, 0.01, 0.02, 1.0, 1.01, 1.02, 2.0, 2.01, 2.02])
     level = np.repeat(np.arange(3), 3)
     problem, parameters = _problem(x, x**2, [1, 2])
-    outcome = bootstrap_errors(problem, parameters, np.array([[2, 1, 0]]), level, level)
+    outcome = bootstrap_errors(problem, parameters, [np.array([[2, 1, 0]])], level, level)
     assert outcome.rank_deficient[[parameters.index(2), parameters.index(3)]].tolist() == [0, 1]
+
+
+def _bootstrap_of_twelve_levels(counts):
+    rng = np.random.default_rng(4)
+    level = np.repeat(np.arange(12), 2)
+    x = level + rng.normal(0, 0.02, 24)
+    y = np.sin(x / 4) + rng.normal(0, 0.01, 24)
+    problem, parameters = _problem(x, y, [1, 2, 3, 4])
+    return bootstrap_errors(problem, parameters, counts, level, level)
+
+
+def _assert_same_bootstrap(one, other):
+    assert one.draws == other.draws
+    assert np.array_equal(one.left_out, other.left_out)
+    assert np.array_equal(one.rank_deficient, other.rank_deficient)
+    np.testing.assert_allclose(one.squared, other.squared, rtol=1e-10, equal_nan=True)
+
+
+def test_bootstrap_errors_do_not_depend_on_how_the_draws_are_cut():
+    counts = np.random.default_rng(8).multinomial(12, np.full(12, 1 / 12), size=150)
+    counts[5] = [6, 6] + [0] * 10  # fails for all but lines
+    whole = _bootstrap_of_twelve_levels([counts])
+    assert whole.rank_deficient.max() >= 1
+    assert np.isfinite(whole.squared).all()
+    for cuts in ([1], [7, 8, 100], range(1, 150)):
+        _assert_same_bootstrap(_bootstrap_of_twelve_levels(np.split(counts, list(cuts))), whole)
+    _assert_same_bootstrap(_bootstrap_of_twelve_levels(iter([counts[:60], counts[60:]])), whole)
+
+
+@pytest.mark.parametrize("at_once", [1, 1000, 7777])
+def test_bootstrap_errors_do_not_depend_on_how_many_residuals_are_held(at_once, monkeypatch):
+    counts = np.random.default_rng(8).multinomial(12, np.full(12, 1 / 12), size=150)
+    whole = _bootstrap_of_twelve_levels([counts])
+    monkeypatch.setattr("fitlib.numerics.bootstrap.RESIDUALS_AT_ONCE", at_once)
+    _assert_same_bootstrap(_bootstrap_of_twelve_levels([counts]), whole)

@@ -5,7 +5,15 @@ import pytest
 from scipy import stats
 
 from fitlib.numerics.diagnostics import information_criteria
-from fitlib.numerics.selection import Evidence, choose, f_probability, paired_standard_error, take
+from fitlib.numerics.selection import (
+    Evidence,
+    ManyEvidence,
+    choose,
+    f_probability,
+    paired_standard_error,
+    take,
+    take_many,
+)
 
 
 def _evidence(losses, parameters=None, squares=None, floor=0.0, weights=None):
@@ -194,3 +202,103 @@ def test_take_agrees_with_choose(rule):
         evidence = _evidence(losses, squares=np.sort(rng.gamma(1.0, size=5))[::-1])
         eligible = rng.random(5) < 0.7
         assert take(evidence, rule, eligible) == choose(evidence, rule, eligible).chosen
+
+
+RULES = ["supported_gain", "one_standard_error", "smallest_loss", "aicc", "bic", "f_test"]
+
+
+def _many(seed, parameters, levels=9, draws=120, floor=0.0, size=1.0):
+    """Losses that fall with the parameters, levels not drawn, candidates without a value, weights that differ."""
+    rng = np.random.default_rng(seed)
+    m = len(parameters)
+    fall = (0.4 + 3.0 ** -np.arange(m))[:, None, None] * size
+    shared = 0.5 * rng.normal(size=(1, levels, draws))  # candidates go wrong at the same levels
+    losses = ((shared + rng.normal(size=(m, levels, draws))) * fall) ** 2
+    means = (shared + 0.5 * rng.normal(size=(m, levels, draws))) * fall
+    weights = rng.poisson(1.0, size=(levels, draws)) * rng.uniform(0.5, 2.0, size=(levels, 1))
+    weights[0, weights.sum(axis=0) == 0] = 1.0
+    weights[:, 3] = [1.5] + [0.0] * (levels - 1)  # a single level drawn
+    squares = np.einsum("mld,ld->md", means**2, weights)
+    missing = rng.random((m, draws)) < 0.15
+    missing[:, 5] = True  # no candidate is judged
+    losses.transpose(0, 2, 1)[missing] = np.nan
+    squares[missing] = np.nan
+    losses[1, np.flatnonzero(weights[:, 7] > 0)[0], 7] = np.nan  # one level of one candidate
+    return _with_idle_levels(ManyEvidence(np.asarray(parameters), losses, weights, squares, floor), 1e3)
+
+
+def _with_idle_levels(many, value):
+    """Another loss at the levels that were not drawn: it must count for nothing."""
+    losses = many.level_losses.copy()
+    idle = losses[:, many.level_weights == 0]
+    losses[:, many.level_weights == 0] = np.where(np.isnan(idle), np.nan, value)
+    return ManyEvidence(many.parameters, losses, many.level_weights, many.level_squares, many.floor)
+
+
+def _draw_by_draw(many, rule, eligible, alpha=0.05):
+    taken = []
+    for draw in range(many.level_weights.shape[1]):
+        drawn = many.level_weights[:, draw] > 0
+        losses, weights = many.level_losses[:, drawn, draw], many.level_weights[drawn, draw]
+        one = Evidence(many.parameters, losses, weights, many.level_squares[:, draw], many.floor)
+        position = take(one, rule, eligible, alpha)
+        taken.append(-1 if position is None else position)
+    return taken
+
+
+@pytest.mark.parametrize("rule", RULES)
+@pytest.mark.parametrize("seed", range(3))
+def test_many_draws_are_judged_as_one_by_one(rule, seed):
+    many = _many(seed, [1, 2, 3, 4, 6])
+    expected = _draw_by_draw(many, rule, np.ones(5, dtype=bool))
+    assert take_many(many, rule, np.ones(5, dtype=bool)).tolist() == expected
+    assert expected[5] == -1
+    assert len(set(expected)) > 3
+    for eligible in ([True, False, True, True, False], [False, False, True, False, False], [False] * 5):
+        eligible = np.array(eligible)
+        found = take_many(many, rule, eligible).tolist()
+        assert found == _draw_by_draw(many, rule, eligible)
+        assert set(found) <= {-1, *np.flatnonzero(eligible)}
+        assert (set(found) == {-1}) == (not eligible.any())
+
+
+@pytest.mark.parametrize("rule", RULES)
+def test_many_draws_with_equal_and_unsorted_numbers_of_parameters(rule):
+    many = _many(11, [3, 1, 2, 3, 2] if rule != "f_test" else [3, 1, 2, 5, 4])
+    found = take_many(many, rule, np.ones(5, dtype=bool)).tolist()
+    assert found == _draw_by_draw(many, rule, np.ones(5, dtype=bool))
+    assert len(set(found)) > 3
+
+
+@pytest.mark.parametrize("rule", RULES)
+def test_many_draws_below_the_floor(rule):
+    """Some losses below the floor and some above it; the simplest of those below is taken."""
+    for size in (1e-16, 3e-15, 1e-14):
+        many = _many(12, [1, 2, 3, 4, 6], floor=1e-29, size=size)
+        assert take_many(many, rule, np.ones(5, dtype=bool)).tolist() == _draw_by_draw(
+            many, rule, np.ones(5, dtype=bool)
+        )
+    tiny = ManyEvidence(np.arange(1, 6), np.full((5, 9, 2), 1e-33), np.ones((9, 2)), np.full((5, 2), 1e-32), 1e-29)
+    assert take_many(tiny, rule, np.ones(5, dtype=bool)).tolist() == [0, 0]
+
+
+@pytest.mark.parametrize("alpha", [1e-6, 0.01, 0.3])
+def test_many_draws_follow_the_level_of_the_f_test(alpha):
+    many = _many(13, [1, 2, 3, 4, 6])
+    found = take_many(many, "f_test", np.ones(5, dtype=bool), alpha).tolist()
+    assert found == _draw_by_draw(many, "f_test", np.ones(5, dtype=bool), alpha)
+    assert found != take_many(many, "f_test", np.ones(5, dtype=bool), 0.9).tolist()
+
+
+@pytest.mark.parametrize("rule", RULES)
+def test_many_draws_with_fewer_levels_than_parameters(rule):
+    many = _many(14, [1, 2, 3, 4, 6], levels=4, draws=60)
+    assert take_many(many, rule, np.ones(5, dtype=bool)).tolist() == _draw_by_draw(many, rule, np.ones(5, dtype=bool))
+
+
+@pytest.mark.parametrize("rule", RULES)
+def test_levels_not_drawn_count_for_nothing(rule):
+    many = _many(15, [1, 2, 3, 4, 6])
+    again = _with_idle_levels(many, -7.0)
+    every = np.ones(5, dtype=bool)
+    assert np.array_equal(take_many(again, rule, every), take_many(many, rule, every))

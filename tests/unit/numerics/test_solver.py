@@ -112,9 +112,9 @@ def test_denormal_steps_keep_the_curve():
 def test_one_observation_is_a_constant():
     fit = LinearProblem(np.ones((1, 1)), np.array([4.2]), np.ones(1), [1]).fit()[0]
     assert (fit.coefficients.tolist(), fit.residual.tolist(), fit.leverage.tolist()) == ([4.2], [0.0], [1.0])
-    held = LinearProblem(np.ones((1, 1)), np.array([4.2]), np.ones(1), [1]).held_out([np.array([0])])
-    assert held.failed.all()
-    assert np.isnan(held.residual).all()
+    (held,) = LinearProblem(np.ones((1, 1)), np.array([4.2]), np.ones(1), [1]).held_out([np.array([0])])
+    assert held.shape == (1, 1)
+    assert np.isnan(held).all()
 
 
 @pytest.mark.parametrize("factor", [1e-5, 1e-7])
@@ -152,7 +152,7 @@ def test_row_order_does_not_matter(seed):
 
 
 def test_blocks_longer_than_the_number_of_parameters():
-    """The two closed forms (of the block, and of the parameters) agree with a refit."""
+    """The closed form agrees with a refit for blocks shorter and longer than the parameters."""
     rng = np.random.default_rng(0)
     x = np.linspace(0, 1, 30)
     y = x + rng.normal(0, 0.1, 30)
@@ -162,16 +162,16 @@ def test_blocks_longer_than_the_number_of_parameters():
         rows = np.arange(9, 9 + length)
         kept = np.delete(np.arange(30), rows)
         expected = y[rows] - np.polyval(np.polyfit(x[kept], y[kept], 2), x[rows])
-        held = problem.held_out([rows])
-        np.testing.assert_allclose(held.residual[1, rows], expected, rtol=1e-9)
-        assert np.isnan(held.residual[1, kept]).all()
+        (held,) = problem.held_out([rows])
+        assert held.shape == (len(family.members), length)  # of the block, and of nothing else
+        np.testing.assert_allclose(held[1], expected, rtol=1e-9)
 
 
 def test_leaving_everything_out_fails():
     x = np.linspace(0, 1, 6)
-    held = make_family("polynomial", x, [1], ()).problem(x, x, np.ones(6)).held_out([np.arange(6)])
-    assert held.failed.all()
-    assert np.isnan(held.residual).all()
+    (held,) = make_family("polynomial", x, [1], ()).problem(x, x, np.ones(6)).held_out([np.arange(6)])
+    assert held.size == 6 * held.shape[0] > 0
+    assert np.isnan(held).all()
 
 
 def test_a_draw_without_enough_levels_gives_no_number():
@@ -180,7 +180,44 @@ def test_a_draw_without_enough_levels_gives_no_number():
     family = make_family("polynomial", x, [1, 2], ())
     problem = family.problem(x, x**2, np.ones(8))
     counts = np.array([[2, 1, 0, 0, 0, 0, 3, 2]])
-    ((_, residual),) = list(problem.refit(counts))
+    residual = problem.refit(counts)
+    assert residual.shape == (len(family.members), 8, 1)
     line, bowed = (next(k for k, member in enumerate(family.members) if member.order == degree) for degree in (1, 2))
-    assert np.isfinite(residual[0, line]).all()
-    assert np.isnan(residual[0, bowed]).all()
+    assert np.isfinite(residual[line]).all()
+    assert np.isnan(residual[bowed]).all()
+
+
+def test_a_limit_withholds_larger_members_of_a_block_and_of_a_draw():
+    """The caller knows how many levels are left; what scatters within them must not be taken for more."""
+    rng = np.random.default_rng(5)
+    x = np.repeat(np.arange(6.0), 3) + rng.normal(0, 0.01, 18)
+    family = make_family("polynomial", x, [0, 1, 2, 3], ())
+    problem = family.problem(x, np.cos(x), np.ones(18))
+    sizes = np.array([member.parameters for member in family.members])
+    blocks, limits = [np.arange(3), np.arange(12, 18), np.arange(3, 6)], np.array([5, 2, 3])
+    free = problem.held_out(blocks)
+    for number, part in enumerate(problem.held_out(blocks, limits)):
+        assert np.isnan(part).all(axis=1).tolist() == (sizes > limits[number]).tolist()
+        assert np.array_equal(part[sizes <= limits[number]], free[number][sizes <= limits[number]])
+    counts = rng.multinomial(18, np.full(18, 1 / 18), size=4)
+    limits = np.array([1, 9, 2, 3])
+    free, limited = problem.refit(counts), problem.refit(counts, limits)
+    assert np.isfinite(free[sizes <= 4]).all()
+    for draw, limit in enumerate(limits):
+        assert np.isnan(limited[:, :, draw]).all(axis=1).tolist() == (sizes > limit).tolist()
+        assert np.array_equal(limited[sizes <= limit, :, draw], free[sizes <= limit, :, draw])
+
+
+def test_members_that_the_data_do_not_determine_have_no_number_anywhere():
+    """Three levels: no cubic, whether left out, refitted or resampled."""
+    x = np.repeat([0.0, 1.0, 2.0], 4)
+    problem = make_family("polynomial", x, [1, 3], ()).problem(x, x**3, np.ones(12))
+    sizes = np.array(problem.sizes)
+    counts = np.ones((2, 12), dtype=int)
+    blocks = [np.array([0]), np.array([4, 5]), np.array([1, 2, 3, 6, 7, 8, 9, 10, 11])]
+    for part in problem.held_out(blocks[:2]):
+        assert np.isnan(part).all(axis=1).tolist() == (sizes > 3).tolist()
+    assert np.isnan(problem.refit(counts)).all(axis=(1, 2)).tolist() == (sizes > 3).tolist()
+    held = problem.resampled_held_out(counts, blocks)
+    assert np.isnan(held[sizes > 3]).all()
+    assert np.isfinite(held[sizes <= 2][:, [0, 4, 5]]).all()
