@@ -21,6 +21,8 @@ LARGEST_CONDITION = 1e12
 SMALLEST_PIVOT = 1e-2
 #: Below this pivot a left-out block of a resample is taken to leave the member undetermined.
 SMALLEST_RESAMPLED_PIVOT = 1e-6
+#: Products of basis functions kept for all draws together; beyond it each draw forms its own.
+PRODUCTS_AT_ONCE = 1_000_000
 #: Doubles held at once by batched problems; results do not depend on it.
 BLOCK_DOUBLES = 4_000_000
 
@@ -251,10 +253,12 @@ class LinearProblem:
 
     def _weigh(self, rows: np.ndarray, counts: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         q = self._q[rows, : self._largest]
-        products = (q[:, :, None] * q[:, None, :]).reshape(rows.size, -1)
         weights = counts.T.astype(float)
-        normal = (products.T @ weights).reshape(self._largest, self._largest, counts.shape[0])
-        return normal, (q * self._rests[-1][rows, None]).T @ weights
+        right = (q * self._rests[-1][rows, None]).T @ weights
+        if q.size * self._largest > PRODUCTS_AT_ONCE:
+            return np.stack([q.T @ (q * column[:, None]) for column in weights.T], axis=2), right
+        products = (q[:, :, None] * q[:, None, :]).reshape(rows.size, -1)
+        return (products.T @ weights).reshape(self._largest, self._largest, counts.shape[0]), right
 
     def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
         """Held-out residuals of each block within each resample, for repeating a whole selection on resamples.
