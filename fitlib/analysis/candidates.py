@@ -9,9 +9,11 @@ import numpy as np
 
 from fitlib.analysis.dataset import DatasetArrays
 from fitlib.numerics.bootstrap import BootstrapErrors, bootstrap_errors
+from fitlib.numerics.exact import as_written
 from fitlib.numerics.families import Family, Member, make_family, parameter_count
 from fitlib.numerics.families.protocol import Problem
 from fitlib.numerics.validation import Fold, SchemeErrors, scheme_errors
+from fitlib.numerics.weighting import exact_weights
 
 
 @dataclass(frozen=True)
@@ -60,6 +62,7 @@ class CandidateSet:
         self._families = families
         self.made: dict[int, Family] = dict(made or {})
         self._groups: dict[int, _Group] = {}
+        self._exact: dict[int, dict] = {}
         entries: list[Entry] = []
         for number in sorted({item.group for item in declared}):
             entries += self._add_group(number, [item for item in declared if item.group == number])
@@ -101,6 +104,15 @@ class CandidateSet:
     def fit(self) -> list:
         """One fit for each entry."""
         return [fit for group in self._groups.values() for fit in group.problem.fit()]
+
+    def exact(self, position: int):
+        """The exact fit of one entry; None where its family has none."""
+        entry = self.entries[position]
+        if entry.group not in self._exact:
+            x, y = as_written(self.data.x), as_written(self.data.y)
+            weights = exact_weights(self.data.weighting, as_written(self.data.stimulus))
+            self._exact[entry.group] = self._groups[entry.group].family.exact(x, y, weights)
+        return self._exact[entry.group].get(entry.member.order)
 
     def curve(self, position: int, coefficients: np.ndarray):
         """The function of one entry with given coefficients."""

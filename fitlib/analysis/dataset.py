@@ -35,6 +35,8 @@ class DatasetArrays:
         True for an analysis function: x is the response.
     direction_index : ndarray of shape (n,), int, or None
         0 rising, 1 falling; None unless every observation says which.
+    weighting : str
+        From which the root weights follow.
     """
 
     rows: np.ndarray
@@ -50,6 +52,7 @@ class DatasetArrays:
     x_interval: tuple[float, float]
     swapped: bool = False
     direction_index: np.ndarray | None = None
+    weighting: str = "none"
 
     @property
     def level_weights(self) -> np.ndarray:
@@ -111,6 +114,7 @@ def make_arrays(study, dataset, observations) -> DatasetArrays:
         interval=(float(interval[0]), float(interval[1])),
         x_interval=_between_levels(response, stimulus, level_index, interval) if swap else tuple(map(float, interval)),
         swapped=swap,
+        weighting=study.weighting,
         direction_index=_directions([observations.direction[row] for row in rows]),
     )
 

@@ -21,6 +21,7 @@ from fitlib.numerics.components import (
     variance_components,
 )
 from fitlib.numerics.diagnostics import excursion, information_criteria, is_monotone, serial_correlation
+from fitlib.numerics.exact import square_root
 from fitlib.numerics.powers import power_form
 from fitlib.numerics.validation import standard_error
 
@@ -94,11 +95,13 @@ def _record(item: Declared, candidates: CandidateSet, position: int, fit, datase
     exact = is_exact(fit.residual_sum_of_squares, data)
     spread = find_spread(fit, design, parts, lack, data, exact)
     covariance = spread.covariance
-    power = power_form(curve, covariance, *data.x_interval)
+    exact_fit = candidates.exact(position)
+    power = power_form(curve, covariance, *data.x_interval, exact_fit, _plain_variance(exact_fit, spread, item, data))
     return (
         _heading(item, data)
         | {"status": "fitted", "message": "", "exact": exact}
         | _sizes(fit, item, data)
+        | _exact_sizes(exact_fit, item, data)
         | _shape(curve, fit, data)
         | _misfit(curve, fit, design, data, dataset, lack, gain)
         | {
@@ -170,6 +173,25 @@ def _sizes(fit, item: Declared, data: DatasetArrays) -> dict:
         "bic_levels": number(levels.bic),
         "condition_number": number(fit.condition_number),
     }
+
+
+def _exact_sizes(exact_fit, item: Declared, data: DatasetArrays) -> dict:
+    """Residual sum of squares and standard deviation without rounding, where the family has an exact fit."""
+    free = data.rows.size - item.parameters
+    if exact_fit is None or free < 1:
+        return {}
+    return {
+        "residual_sum_of_squares": number(exact_fit.residual_sum_of_squares),
+        "residual_standard_deviation": number(square_root(exact_fit.residual_sum_of_squares / free)),
+    }
+
+
+def _plain_variance(exact_fit, spread: Spread, item: Declared, data: DatasetArrays):
+    """Residual variance as an exact number, where nothing else makes up the covariance."""
+    free = data.rows.size - item.parameters
+    if exact_fit is None or free < 1 or spread.level_variance > 0 or spread.series_variance > 0:
+        return None
+    return exact_fit.residual_sum_of_squares / free
 
 
 def _shape(curve, fit, data: DatasetArrays) -> dict:

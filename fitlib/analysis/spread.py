@@ -8,7 +8,14 @@ import numpy as np
 from scipy import stats
 
 from fitlib.analysis.dataset import DatasetArrays
-from fitlib.numerics.components import SIGNIFICANT, Components, LackOfFit, SeriesEffect, series_effect
+from fitlib.numerics.components import (
+    SERIES_SIGNIFICANT,
+    SIGNIFICANT,
+    Components,
+    LackOfFit,
+    SeriesEffect,
+    series_effect,
+)
 from fitlib.numerics.uncertainty import coefficient_covariance, effective_degrees_of_freedom
 
 
@@ -66,7 +73,7 @@ def find_spread(
     free = data.rows.size - fit.coefficients.size
     single = fit.residual_sum_of_squares / free if free > 0 else np.nan
     effect = None if exact else series_effect(fit.residual, data.root_weights, data.level_index, data.series_index)
-    series_found = effect is not None and effect.p < SIGNIFICANT
+    series_found = effect is not None and effect.p < SERIES_SIGNIFICANT
     lack = _against_rest(lack, effect) if series_found and lack is not None else lack
     level_found = not exact and lack is not None and lack.p < SIGNIFICANT
     level_variance = parts.level_deviation**2 if level_found and parts.level_deviation > 0 else 0.0

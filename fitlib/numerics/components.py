@@ -9,6 +9,9 @@ from scipy import stats
 
 #: Probability below which a component is called found (common practice, no source).
 SIGNIFICANT = 0.05
+#: The same for differences between whole series: with two or three series the variance is so poorly known that it
+#: widens everything, so that more than a hint is asked for (our choice, no source).
+SERIES_SIGNIFICANT = 0.01
 
 
 @dataclass(frozen=True)
@@ -198,7 +201,7 @@ def variance_components(
     pure_variance = pure / pure_df if pure_df else np.nan
     repeat_variance = repeat / repeat_df if repeat_df else np.nan
     effect = series_effect(residual, root_weights, level_index, series_index)
-    within = pure_variance if effect is None or not effect.p < SIGNIFICANT else effect.rest_variance
+    within = pure_variance if effect is None or not effect.p < SERIES_SIGNIFICANT else effect.rest_variance
     level_variance = level_variance_component(residual, design, root_weights, level_index, within)
     series_deviation = np.nan if effect is None else effect.deviation
     repeatability, pure_error, level_deviation = np.sqrt([repeat_variance, pure_variance, level_variance]).tolist()

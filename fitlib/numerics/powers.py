@@ -11,6 +11,7 @@ from fractions import Fraction
 
 import numpy as np
 
+from fitlib.numerics.exact import ExactFit, square_root
 from fitlib.numerics.families.polynomial import PolynomialCurve, Scale
 
 
@@ -21,7 +22,7 @@ class PowerForm:
     Attributes
     ----------
     coefficients : ndarray of shape (degree + 1,)
-        Of ``x^0``, ``x^1``, …; correctly rounded from the issued function.
+        Of ``x^0``, ``x^1``, …; correctly rounded.
     standard_uncertainties : ndarray of shape (degree + 1,)
     largest_shift : float
         Largest difference over the interval between the issued function and these rounded coefficients, both in
@@ -33,7 +34,14 @@ class PowerForm:
     largest_shift: float
 
 
-def power_form(curve: PolynomialCurve, covariance: np.ndarray, lower: float, upper: float) -> PowerForm:
+def power_form(
+    curve: PolynomialCurve,
+    covariance: np.ndarray,
+    lower: float,
+    upper: float,
+    exact_fit: ExactFit | None = None,
+    plain_variance: Fraction | None = None,
+) -> PowerForm:
     """Coefficients in powers of the stimulus with their standard uncertainties.
 
     Parameters
@@ -43,14 +51,19 @@ def power_form(curve: PolynomialCurve, covariance: np.ndarray, lower: float, upp
         Of the scaled coefficients.
     lower, upper : float
         Interval over which the shift caused by rounding is computed.
+    exact_fit : ExactFit or None
+        The same fit in exact arithmetic; its coefficients are then published, rounded once, and the shift is that
+        between them and the issued function.
+    plain_variance : Fraction or None
+        Variance at weight 1, where the covariance is that and nothing else; the uncertainties are then exact, too.
 
     Returns
     -------
     PowerForm
     """
     columns, constant = _columns(curve.scale, len(curve.coefficients))
-    exact = _combine(columns, constant, [Fraction(float(value)) for value in curve.coefficients])
-    rounded = [_to_double(value) for value in exact]
+    issued = _combine(columns, constant, [Fraction(float(value)) for value in curve.coefficients])
+    rounded = [_to_double(value) for value in (exact_fit.coefficients if exact_fit else issued)]
     transform = np.array([[_to_double(value) for value in column] for column in columns]).T
     # The law of propagation of uncertainty (JCGM 100:2008, eq. 13) for a linear change of basis. The square root of
     # the covariance is transformed, not the covariance, so that cancellation costs half as many digits.
@@ -58,9 +71,15 @@ def power_form(curve: PolynomialCurve, covariance: np.ndarray, lower: float, upp
         uncertainties = np.sqrt(np.sum((transform @ _root(covariance)) ** 2, axis=1))
     return PowerForm(
         coefficients=np.array(rounded),
-        standard_uncertainties=uncertainties,
-        largest_shift=_largest_shift(exact, rounded, lower, upper),
+        standard_uncertainties=_exact_roots(exact_fit, plain_variance, uncertainties),
+        largest_shift=_largest_shift(issued, rounded, lower, upper),
     )
+
+
+def _exact_roots(exact_fit: ExactFit | None, variance: Fraction | None, otherwise: np.ndarray) -> np.ndarray:
+    if exact_fit is None or variance is None:
+        return otherwise
+    return np.array([square_root(factor * variance) for factor in exact_fit.variance_factors])
 
 
 def _columns(scale: Scale, count: int) -> tuple[list[list[Fraction]], list[Fraction]]:

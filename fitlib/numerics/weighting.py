@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from fractions import Fraction
+
 import numpy as np
 
 #: Power of the stimulus to which the standard deviation of the response is taken to be proportional.
@@ -25,6 +28,23 @@ def spread(weighting: str, stimulus: np.ndarray) -> np.ndarray:
     """
     power = SPREAD_POWER[weighting]
     return np.ones_like(stimulus, dtype=float) if power == 0 else np.asarray(stimulus, dtype=float) ** power
+
+
+def exact_weights(weighting: str, stimulus: Sequence[Fraction]) -> list[Fraction]:
+    """Weights without rounding, on an arbitrary scale.
+
+    Parameters
+    ----------
+    weighting : str
+        A key of ``SPREAD_POWER``.
+    stimulus : sequence of Fraction
+
+    Returns
+    -------
+    list of Fraction
+    """
+    power = int(2 * SPREAD_POWER[weighting])
+    return [Fraction(1)] * len(stimulus) if power == 0 else [1 / value**power for value in stimulus]
 
 
 def root_weights(weighting: str, stimulus: np.ndarray) -> np.ndarray:

@@ -14,6 +14,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.polynomial import chebyshev
 
+from fitlib.numerics.exact import ExactFit, as_written, exact_fits
 from fitlib.numerics.families.protocol import Member
 from fitlib.numerics.least_squares import LinearProblem
 
@@ -129,6 +130,12 @@ class Polynomials:
     def curve(self, member: Member, coefficients: np.ndarray) -> PolynomialCurve:
         """The polynomial of one member with given coefficients."""
         return PolynomialCurve(self.scale, np.asarray(coefficients, dtype=float))
+
+    def exact(self, x, y, weights) -> dict[int, ExactFit]:
+        """The declared polynomials fitted exactly to numbers as written; keys are degrees."""
+        points = [(as_written([a])[0], as_written([b])[0]) for a, b in self.scale.fixed_points]
+        orders = [member.order for member in self.members if not member.probe]
+        return exact_fits(x, y, weights, orders, points)
 
     def two_orders_higher(self, member: Member) -> Member | None:
         """The polynomial two degrees higher."""

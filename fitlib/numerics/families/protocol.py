@@ -77,5 +77,8 @@ class Family(Protocol):
     def curve(self, member: Member, coefficients: np.ndarray) -> Curve:
         """The function of one member with given coefficients."""
 
+    def exact(self, x, y, weights) -> dict:
+        """Exact fits by order, where the family has them; else an empty dict."""
+
     def two_orders_higher(self, member: Member) -> Member | None:
         """The member against which lack of fit of ``member`` is judged."""
