@@ -42,10 +42,10 @@ def test_the_quadratic_is_chosen_by_levels_and_one_standard_error(result):
 def _digits(result, change=1.0):
     terms = _candidate(result, "polynomial-2")["terms"]
     for k, term in enumerate(terms):
-        assert term["estimate"] * change == pytest.approx(PUBLISHED[f"StRD B{k}"], rel=1e-13)
-        assert term["standard_uncertainty"] * change == pytest.approx(PUBLISHED[f"StRD sd B{k}"], rel=1e-13)
+        assert term["estimate"] * change == pytest.approx(PUBLISHED[f"StRD B{k}"], rel=1e-13, abs=0.0)
+        assert term["standard_uncertainty"] * change == pytest.approx(PUBLISHED[f"StRD sd B{k}"], rel=1e-13, abs=0.0)
     deviation = _candidate(result, "polynomial-2")["residual_standard_deviation"]
-    assert deviation * change == pytest.approx(PUBLISHED["StRD residual SD"], rel=1e-13)
+    assert deviation * change == pytest.approx(PUBLISHED["StRD residual SD"], rel=1e-13, abs=0.0)
 
 
 def test_coefficients_and_their_standard_deviations_to_thirteen_digits(result):
