@@ -7,6 +7,10 @@ from collections.abc import Iterator
 
 from fitlib.collect.cells import Column, Table
 
+WITHIN_SERIES = (
+    "lack of fit against what remains when the means of the series are taken out; it decides where whole series differ"
+)
+
 CANDIDATES = (
     Column("dataset", "text", "", "The instrument or curve."),
     Column("family", "text", "", "Kind of function."),
@@ -40,6 +44,8 @@ CANDIDATES = (
     Column("lack_of_fit_p", "number", "1", "Probability of so large a ratio by chance, if the function were right."),
     Column("lack_of_fit_numerator_df", "whole_number", "1", "Degrees of freedom of lack of fit."),
     Column("lack_of_fit_denominator_df", "whole_number", "1", "Degrees of freedom of pure error."),
+    Column("lack_of_fit_within_series_f", "number", "1", f"F ratio: {WITHIN_SERIES}."),
+    Column("lack_of_fit_within_series_p", "number", "1", f"Probability of so large an F by chance: {WITHIN_SERIES}."),
     Column("lack_of_fit_sum_of_squares", "number", "weighted^2", "Sum of squares of lack of fit."),
     Column("pure_error_sum_of_squares", "number", "weighted^2", "Sum of squares within levels."),
     Column("misfit", "number", "evaluated", "Largest mean residual of a level, in the quantity that the user wants."),
@@ -100,6 +106,7 @@ _LACK_OF_FIT = {
     "sum_of_squares": "lack_of_fit_sum_of_squares",
     "pure_error_sum_of_squares": "pure_error_sum_of_squares",
 }
+WITHIN_SERIES_COLUMNS = {"f": "lack_of_fit_within_series_f", "p": "lack_of_fit_within_series_p"}
 _NESTED = ("turning_points", "excursion", "lack_of_fit", "serial")
 
 
@@ -145,9 +152,10 @@ def _candidates(results: list[dict]) -> Iterator[dict]:
         for item in result["candidates"]:
             row = {name: value for name, value in item.items() if name in plain}
             row |= {"dataset": result["dataset"], "turning_points": _joined(item.get("turning_points"))}
-            row |= _spread(item.get("excursion"), {key: f"excursion_{key}" for key in _EXCURSION})
-            row |= _spread(item.get("lack_of_fit"), _LACK_OF_FIT)
-            row |= _spread(item.get("serial"), {key: f"serial_{key}" for key in _SERIAL})
+            row |= spread(item.get("excursion"), {key: f"excursion_{key}" for key in _EXCURSION})
+            row |= spread(item.get("lack_of_fit"), _LACK_OF_FIT)
+            row |= spread(item.get("lack_of_fit_within_series"), WITHIN_SERIES_COLUMNS)
+            row |= spread(item.get("serial"), {key: f"serial_{key}" for key in _SERIAL})
             row["outer_choices"] = outer.get(item["candidate"], 0) if outer else None
             yield row | _losses(item) | _deficient_draws(result, item["candidate"])
 
@@ -156,7 +164,7 @@ def _joined(values: list[float] | None) -> str | None:
     return "; ".join(repr(float(value)) for value in values) if values else None
 
 
-def _spread(record: dict | None, names: dict[str, str]) -> dict:
+def spread(record: dict | None, names: dict[str, str]) -> dict:
     return {} if record is None else {name: record.get(key) for key, name in names.items()}
 
 

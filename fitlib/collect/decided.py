@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from fitlib.collect.cells import Column, Table
+from fitlib.collect.competing import WITHIN_SERIES, WITHIN_SERIES_COLUMNS, spread
 from fitlib.collect.documents import function_path
 
 DATASETS = (
@@ -73,7 +74,22 @@ CHOSEN = (
     Column("outer_loss_interior", "number", "fitted^2", "The same, without the two end levels."),
     Column("lack_of_fit_f", "number", "1", "F ratio of lack of fit over pure error."),
     Column("lack_of_fit_p", "number", "1", "Probability of so large a ratio by chance, if the function were right."),
+    Column("lack_of_fit_within_series_f", "number", "1", f"F ratio: {WITHIN_SERIES}."),
+    Column("lack_of_fit_within_series_p", "number", "1", f"Probability of so large an F by chance: {WITHIN_SERIES}."),
     Column("misfit", "number", "evaluated", "Largest mean residual of a level, in the quantity that the user wants."),
+    Column(
+        "target_met",
+        "boolean",
+        "",
+        "Whether misfit and expanded uncertainty of one converted reading stay within the target; empty without one.",
+    ),
+    Column(
+        "largest_expanded_uncertainty",
+        "number",
+        "evaluated",
+        "Of one converted reading, over the interval, from the fit alone; holds only for an adequate function.",
+    ),
+    Column("largest_expanded_uncertainty_at", "number", "abscissa", "Where in the interval it is so large."),
     Column("largest_residual", "number", "fitted", "Residual with the largest magnitude among the observations used."),
     Column("largest_residual_evaluated", "number", "evaluated", "The same, in the quantity that the user wants."),
     Column("largest_residual_stimulus", "number", "stimulus", "Stimulus of that observation."),
@@ -95,6 +111,8 @@ COMPONENTS = (
 _COUNTS = ("read", "used", "excluded", "verification", "rejected")
 _DESIGN = ("levels", "series", "replicates", "largest_supported_parameters")
 _SELECTION = tuple(column.name for column in CHOSEN[1:14])
+_EXPANDED = "largest_expanded_uncertainty"
+_EXPANDED_COLUMNS = {"value": _EXPANDED, "at": f"{_EXPANDED}_at"}
 _RESIDUAL = {
     "value": "largest_residual",
     "in_evaluated_unit": "largest_residual_evaluated",
@@ -169,6 +187,8 @@ def _chosen(result: dict) -> dict:
     item = next((item for item in result["candidates"] if item["candidate"] == selection["candidate"]), {})
     lack = item.get("lack_of_fit") or {}
     row |= {"lack_of_fit_f": lack.get("f"), "lack_of_fit_p": lack.get("p"), "misfit": item.get("misfit")}
+    row |= spread(item.get("lack_of_fit_within_series"), WITHIN_SERIES_COLUMNS)
+    row |= {"target_met": selection.get("target_met")} | spread(selection.get(_EXPANDED), _EXPANDED_COLUMNS)
     residual = selection["largest_residual"] or {}
     row |= {name: residual.get(key) for key, name in _RESIDUAL.items()}
     row["warnings"] = _sentences(result["warnings"])

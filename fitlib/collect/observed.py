@@ -54,6 +54,13 @@ VERIFICATION = (
     Column("fitted", "number", "fitted", "Value of the chosen candidate."),
     Column("residual", "number", "fitted", "Observed less fitted value; the point took no part in the fit."),
     Column("evaluated_deviation", "number", "evaluated", "The same deviation in the quantity that the user wants."),
+    Column(
+        "prediction_lower", "number", "fitted", "Lower end of the 95 % prediction interval of one observation there."
+    ),
+    Column("prediction_upper", "number", "fitted", "Upper end; the interval holds only for an adequate function."),
+    Column(
+        "within_prediction_interval", "boolean", "", "Whether the observation lies in that interval, ends included."
+    ),
 )
 
 

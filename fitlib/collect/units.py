@@ -7,6 +7,8 @@ from dataclasses import dataclass
 
 # A name that can carry an exponent as it stands; anything else is put in brackets first.
 _PLAIN = re.compile(r"[^\W\d_]+|°[A-Z]|%")
+# One pair of brackets around the whole, as in ``(unit not stated)``.
+_BRACKETED = re.compile(r"\([^()]*\)")
 
 
 @dataclass(frozen=True)
@@ -98,7 +100,7 @@ def squared(unit: str) -> str:
     """
     if unit in ("", "1"):
         return unit
-    return f"{unit}²" if _PLAIN.fullmatch(unit) else f"({unit})²"
+    return f"{unit}²" if _PLAIN.fullmatch(unit) or _BRACKETED.fullmatch(unit) else f"({unit})²"
 
 
 def _abscissa(settings: dict) -> dict:

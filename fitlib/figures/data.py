@@ -16,6 +16,10 @@ from fitlib.figures.view import Drawn, View
 from fitlib.figures.words import clean, counted, listed, with_unit
 
 _FAR = 2.0  # an excluded observation farther than this many data ranges away is put at the edge, and a note says so
+_ABOUT_BANDS = {
+    "inadequate": "No confidence band and no prediction interval: neither holds for a function that is inadequate.",
+    "not_evaluated": "Band and interval hold only if the function is adequate, which was not evaluated.",
+}
 
 
 def draw_data(view: View) -> str:
@@ -31,7 +35,7 @@ def draw_data(view: View) -> str:
     str
         SVG text.
     """
-    sheet = Sheet([[2.7, 1], [2.3, 1]], shared_x=True)
+    sheet = Sheet([[2.3, 1], [2.0, 1]], shared_x=True)
     upper, lower = sheet.panels
     points_legend(sheet, view)
     across = linear_scale(np.concatenate([_near(view, view.x), finite(view.grid)]), 0.04)
@@ -42,7 +46,7 @@ def draw_data(view: View) -> str:
     _draw_functions(sheet, upper, view, across)
     _draw_deviations(sheet, lower, view, across)
     sheet.note(view.counts() + ".")
-    figure = sheet.arrange(f"{view.name}: observations and functions")
+    figure = sheet.arrange(view.title("observations and functions"))
     return to_svg(figure, "data", f"Observations and functions of {view.name}", _words(view))
 
 
@@ -141,6 +145,7 @@ def _draw_deviations(sheet: Sheet, panel: Axes, view: View, across: LinearScale)
 
 def _draw_bands(sheet: Sheet, panel: Axes, view: View, x: np.ndarray, scale: LinearScale, base: np.ndarray) -> None:
     """Two intervals of different meaning: a filled band, and a pair of dashed lines."""
+    sheet.note(_ABOUT_BANDS.get(view.verdict, ""))
     if band := view.interval("confidence_band"):
         low, high, share = band
         panel.fill_between(x, scale(low - base), scale(high - base), color=style.BAND, linewidth=0, zorder=1.5)
@@ -172,5 +177,6 @@ def _words(view: View) -> str:
     return (
         f"Upper panel: {view.fitted['quantity']} against {view.across['quantity']}, {view.counts()}, "
         f"with the functions {functions or 'none'}. Lower panel: deviations from the chosen function, "
-        "with its confidence band and its prediction interval where they were computed."
+        "with its confidence band and its prediction interval where they hold."
+        + (f" The chosen function: {view.mark}." if view.mark else "")
     )

@@ -38,7 +38,7 @@ def draw_level_loss(view: View) -> str:
     else:
         empty_panel(panel, "No scheme gave a loss per level.")
     sheet.note(view.counts() + ".")
-    figure = sheet.arrange(f"{view.name}: loss per level")
+    figure = sheet.arrange(view.title("loss per level"))
     words = "; ".join(_share_words(view, drawn, losses) for drawn, losses in curves)
     return to_svg(figure, "level_loss", f"Loss per level of {view.name}", f"Held-out loss of each level. {words}")
 

@@ -15,6 +15,15 @@ from fitlib.figures.words import axis_label, clean, listed
 
 _REACH = 30.0
 FITTED_POINTS = "fitted points (not held out)"
+#: How the rules that compare held-out losses choose, so that the ring can be understood without the report.
+RULE_NOTES = {
+    "smallest_loss": "Rule: the eligible candidate with the smallest deciding loss.",
+    "one_standard_error": "Rule: the eligible candidate with the fewest parameters whose deciding loss is not above "
+    "the threshold, which is the smallest loss plus its standard error.",
+    "supported_gain": "Rule: the eligible candidate with the fewest parameters over which no gain of one with more is "
+    "supported. A gain is supported when the deciding loss is lower, paired by level and with end levels half, and an "
+    "F test on level means agrees; there is no threshold to draw.",
+}
 
 
 def draw_loss(view: View) -> str:
@@ -38,7 +47,7 @@ def draw_loss(view: View) -> str:
     else:
         empty_panel(panel, "There are no candidates.")
     sheet.note(view.counts() + ".")
-    figure = sheet.arrange(f"{view.name}: loss against number of parameters")
+    figure = sheet.arrange(view.title("loss against number of parameters"))
     return to_svg(figure, "loss", f"Loss against number of parameters of {view.name}", _words(view))
 
 
@@ -197,7 +206,7 @@ def _mark_chosen(sheet: Sheet, panel: Axes, view: View, rows: list[dict], scale:
             "markeredgewidth": 1.3, "linestyle": "none"}  # fmt: skip
     if np.isfinite(y):
         panel.plot([x], [y], zorder=4, **look)
-    sheet.entry(Line2D([], [], **{**look, "markersize": 8}), f"chosen: {clean(view.chosen, 40)}")
+    sheet.entry(Line2D([], [], **{**look, "markersize": 8}), f"chosen: {view.chosen_words}")
 
 
 def _legend(sheet: Sheet, view: View, rows: list[dict], curves: list[tuple[str, np.ndarray, style.Line]]) -> None:
@@ -231,6 +240,7 @@ def _notes(sheet: Sheet, view: View, rows: list[dict], curves: list[tuple[str, n
         losses = scheme_losses(view, view.deciding["scheme"], rows)
         lost = [row["candidate"] for row, loss in zip(rows, losses, strict=True) if not np.isfinite(loss)]
         sheet.note(f"Without a deciding loss (reasons in the table): {listed(lost)}." if lost else "")
+    sheet.note(RULE_NOTES.get(view.settings.get("rule"), ""))
     if view.weighted:
         sheet.note("Losses are weighted, so that their roots are not drawn.")
     if any((losses <= 0).any() for _, losses, _ in curves):
@@ -242,5 +252,5 @@ def _words(view: View) -> str:
     scheme = view.deciding["scheme"] if view.deciding else "none"
     return (
         f"Loss of {len(view.candidates)} candidates against their number of parameters, logarithmic scale. "
-        f"Deciding scheme: {scheme}. Chosen: {view.chosen or 'none'}. The numbers stand in the table of candidates."
+        f"Deciding scheme: {scheme}. Chosen: {view.chosen_words}. The numbers stand in the table of candidates."
     )

@@ -39,7 +39,7 @@ def draw_residuals(view: View) -> str:
             empty_panel(panel, "No residuals: no function was chosen.")
     sheet.note(view.counts() + ".")
     whose = f" of {clean(view.chosen, 30)}" if view.chosen else ""
-    figure = sheet.arrange(f"{view.name}: residuals{whose}")
+    figure = sheet.arrange(view.title(f"residuals{whose}"))
     return to_svg(figure, "residuals", f"Residuals of {view.name}", _words(view))
 
 

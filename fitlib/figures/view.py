@@ -112,9 +112,9 @@ class View:
         return None if values is None or len(values) != self.grid.size else as_array(values)
 
     def interval(self, name: str) -> tuple[np.ndarray, np.ndarray, float] | None:
-        """Lower and upper curve of a band and its coverage probability."""
+        """Lower and upper curve of a band and its coverage probability; none where the function is inadequate."""
         band = (self.result.get("curves") or {}).get(name)
-        if not band or self.grid.size == 0:
+        if not band or self.grid.size == 0 or self.verdict == "inadequate":
             return None
         return as_array(band["lower"]), as_array(band["upper"]), float(band["coverage_probability"])
 
@@ -122,6 +122,26 @@ class View:
     def chosen(self) -> str | None:
         """Id of the chosen candidate."""
         return self.selection.get("candidate")
+
+    @cached_property
+    def verdict(self) -> str | None:
+        """Verdict on the chosen function."""
+        return self.selection.get("verdict")
+
+    @cached_property
+    def mark(self) -> str:
+        """What is said beside the chosen function wherever it is named: nothing where it is adequate."""
+        unusable = {"inadequate": "verdict inadequate", "not_evaluated": "verdict not evaluated"}
+        return unusable.get(self.verdict, "") if self.chosen is not None else ""
+
+    @cached_property
+    def chosen_words(self) -> str:
+        """The chosen candidate with its mark."""
+        return ", ".join(part for part in (clean(self.chosen or "none", 40), self.mark) if part)
+
+    def title(self, words: str) -> str:
+        """Title of a figure: the dataset, what is shown, and the mark of a function that must not be used."""
+        return f"{self.name}: {words}" + (f" – {self.mark}" if self.mark else "")
 
     @cached_property
     def most_parameters(self) -> str | None:
@@ -142,6 +162,8 @@ class View:
         for role, candidate in parts.items():
             if candidate is not None:
                 roles.setdefault(candidate, []).append(role)
+        if self.chosen in roles and self.mark:
+            roles[self.chosen].insert(1, self.mark)
         return [
             Drawn(candidate, own[0], f"{clean(candidate, 40)} ({', '.join(own)})") for candidate, own in roles.items()
         ]

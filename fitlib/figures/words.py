@@ -7,6 +7,7 @@ import re
 import textwrap
 
 _NOT_IN_XML = re.compile("[^\t\n\r\x20-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
+_BRACKETED = re.compile(r"\([^()]*\)")  # one pair of brackets around the whole, as in "(unit not stated)"
 _TIE = "\N{NO-BREAK SPACE}"  # a label that is broken keeps its unit whole
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 
@@ -25,11 +26,15 @@ def power_of_ten(exponent: int) -> str:
 def unit_text(unit: str, power: int = 0, exponent: int = 1) -> str:
     """The unit below the fraction line of an axis label, with a power of ten where numbers are scaled."""
     unit = clean(unit, 24)
+    bracketed = _BRACKETED.fullmatch(unit) is not None
     if unit and exponent != 1:
-        simple = re.fullmatch(r"[^\W\d_]+|[%°]\w*", unit)
+        simple = bracketed or re.fullmatch(r"[^\W\d_]+|[%°]\w*", unit)
         unit = (unit if simple else f"({unit})") + str(exponent).translate(_SUPERSCRIPT)
     if power:
-        return f"({power_of_ten(power)}{_TIE}{unit})" if unit else power_of_ten(power)
+        inside = unit[1:-1] if bracketed and exponent == 1 else unit
+        return f"({power_of_ten(power)}{_TIE}{inside})" if unit else power_of_ten(power)
+    if bracketed:
+        return unit
     compound = any(mark in unit for mark in " /·*") and not (unit.startswith("(") and exponent != 1)
     return f"({unit})" if compound else unit
 
@@ -39,7 +44,7 @@ def axis_label(quantity: str, unit: str, power: int = 0, offset: float = 0.0, ex
     quantity = clean(quantity, 48)
     if offset:
         quantity = f"({quantity} − {number(offset, 15)})"
-    below = unit_text(unit, power, exponent)
+    below = unit_text(unit, power, exponent).replace(" ", _TIE)
     return f"{quantity} /{_TIE}{below}" if below else quantity
 
 

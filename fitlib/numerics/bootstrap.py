@@ -75,11 +75,12 @@ def bootstrap_errors(
         for start in range(0, block.shape[0], step):
             rows = block[start : start + step, units]
             levels = distinct_levels(rows, level_index)
-            residual = problem.refit(rows, levels)
-            sound = ~np.isnan(residual[:, 0]) & (levels[None, :] >= sizes[:, None])
+            residual, sound = problem.refit_finite(rows, levels)
+            sound &= levels[None, :] >= sizes[:, None]
             undrawn = (rows == 0).T.astype(float)
-            residual.transpose(0, 2, 1)[~sound] = 0.0
-            total += np.einsum("pnd,pnd,nd->pn", residual, residual, undrawn)
+            np.multiply(residual, residual, out=residual)
+            residual *= undrawn
+            total += np.matmul(residual, sound.astype(float)[:, :, None])[:, :, 0]
             number += sound.astype(float) @ undrawn.T
             deficient += (~sound).sum(axis=1)
             left_out += undrawn.sum(axis=1).astype(int)

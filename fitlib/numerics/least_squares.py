@@ -19,6 +19,8 @@ from fitlib.numerics.nested import solve_nested
 LARGEST_CONDITION = 1e12
 #: Problems with a smaller relative pivot are refitted by QR: normal equations lose digits there.
 SMALLEST_PIVOT = 1e-2
+#: The same for draws of a bootstrap, of which only means are used.
+SMALLEST_DRAW_PIVOT = 1e-4
 #: Below this pivot a left-out block of a resample is taken to leave the member undetermined.
 SMALLEST_RESAMPLED_PIVOT = 1e-6
 #: Products of basis functions kept for all draws together; beyond it each draw forms its own.
@@ -165,20 +167,40 @@ class LinearProblem:
             Unweighted residuals; nan for a member that is not determined without the block.
         """
         out = [np.full((len(self.sizes), block.size), np.nan) for block in blocks]
-        if self._largest == 0:
-            return out
+        for numbers, _, values in self.held_out_batches(blocks, limits):
+            for number, value in zip(numbers, values, strict=True):
+                out[number] = value
+        return out
+
+    def held_out_batches(
+        self, blocks: Sequence[np.ndarray], limits: np.ndarray | None = None
+    ) -> Iterator[tuple[np.ndarray, np.ndarray, np.ndarray]]:
+        """The same in batches of blocks of equal length, for many blocks.
+
+        Parameters
+        ----------
+        blocks : sequence of ndarray of int
+        limits : ndarray of shape (blocks,), int, or None
+
+        Yields
+        ------
+        numbers : ndarray of int
+            Which blocks.
+        rows : ndarray of shape (numbers, length), int
+        residual : ndarray of shape (numbers, members, length)
+        """
         limits = np.full(len(blocks), self._largest) if limits is None else np.minimum(limits, self._largest)
         for numbers in _in_batches(blocks, self._largest):
             rows = np.stack([blocks[number] for number in numbers])
-            values = self._without(rows, limits[numbers])
-            for place, number in enumerate(numbers):
-                out[number] = values[place]
-        return out
+            if self._largest == 0:
+                yield numbers, rows, np.full((rows.shape[0], len(self.sizes), rows.shape[1]), np.nan)
+            else:
+                yield numbers, rows, self._without(rows, limits[numbers])
 
     def _largest_sound(self) -> int:
-        """Largest member that all observations together determine."""
-        sound = [size for size in self.sizes if size <= self._rows and self._sound(size)]
-        return max(sound, default=0)
+        """Largest member that all observations together determine; a part of a sound design is sound."""
+        sizes = sorted({size for size in self.sizes if size <= self._rows}, reverse=True)
+        return next((size for size in sizes if self._sound(size)), 0)
 
     def _sound(self, size: int) -> bool:
         return _condition(self._r[:size, :size]) < LARGEST_CONDITION
@@ -227,25 +249,46 @@ class LinearProblem:
         ndarray of shape (members, n, draws)
             Unweighted residuals of every observation, drawn or not; nan where the draw does not determine the member.
         """
-        sizes = np.array(self.sizes)
-        out = np.full((sizes.size, self.design.shape[0], counts.shape[0]), np.nan)
+        residual, determined = self.refit_finite(counts, limits)
+        residual.transpose(0, 2, 1)[~determined] = np.nan
+        return residual
+
+    def refit_finite(self, counts: np.ndarray, limits: np.ndarray | None = None) -> tuple[np.ndarray, np.ndarray]:
+        """The same without nan, for sums over many draws.
+
+        Parameters
+        ----------
+        counts : ndarray of shape (draws, n), int
+        limits : ndarray of shape (draws,), int, or None
+
+        Returns
+        -------
+        residual : ndarray of shape (members, n, draws)
+            Finite, and meaningless where the member is not determined.
+        determined : ndarray of shape (members, draws), bool
+        """
+        sizes, draws = np.array(self.sizes), counts.shape[0]
         if self._largest == 0:
-            return out
-        limits = np.full(counts.shape[0], self._largest) if limits is None else np.minimum(limits, self._largest)
+            return np.zeros((sizes.size, self.design.shape[0], draws)), np.zeros((sizes.size, draws), dtype=bool)
+        limits = np.full(draws, self._largest) if limits is None else np.minimum(limits, self._largest)
         place = np.minimum(sizes, self._largest) - 1
         normal, right = self._normal_of(counts)
         solved = solve_nested(normal, right, self._z[: self._largest], normal[np.diag_indices(self._largest)])
-        change = self._q[:, : self._largest] @ solved.changes[place]
-        np.subtract(self._rests[place][:, :, None], change, out=out)
-        out /= self.root_weights[:, None]
-        within = sizes[:, None] <= limits[None, :]
-        weak = within & (solved.smallest_pivot[place] < SMALLEST_PIVOT)
-        out.transpose(0, 2, 1)[~within] = np.nan
-        draws = np.flatnonzero(weak.any(axis=0))
-        if draws.size:
-            again = self._refit_by_qr(counts[draws])
-            out.transpose(0, 2, 1)[weak] = again.transpose(0, 2, 1)[weak[:, draws]]
-        return out
+        residual = self._q[:, : self._largest] @ solved.changes[place]
+        np.subtract(self._rests[place][:, :, None], residual, out=residual)
+        residual /= self.root_weights[:, None]
+        determined = sizes[:, None] <= limits[None, :]
+        weak = determined & (solved.smallest_pivot[place] < SMALLEST_DRAW_PIVOT)
+        again = np.flatnonzero(weak.any(axis=0))
+        if again.size:
+            better = self._refit_by_qr(counts[again])
+            lost = np.isnan(better[:, 0])
+            better[np.broadcast_to(lost[:, None], better.shape)] = 0.0
+            for member in range(sizes.size):
+                which = weak[member, again]
+                residual[member][:, again[which]] = better[member][:, which]
+            determined[:, again] &= ~(lost & weak[:, again])
+        return residual, determined
 
     def _normal_of(self, counts: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Normal matrices (P, P, draws) and right-hand sides (P, draws) of draws, in the basis of all observations."""

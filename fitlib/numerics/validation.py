@@ -14,6 +14,9 @@ import numpy as np
 
 from fitlib.numerics.families.protocol import Problem
 
+#: From here on a fold is counted by its own levels and not by all.
+MANY_LEVELS = 1000
+
 
 @dataclass(frozen=True)
 class Fold:
@@ -138,27 +141,34 @@ def scheme_errors(
     members, n = len(parameters), level_index.size
     sizes = np.asarray(parameters)
     limits = _levels_kept(folds, level_index)
-    held = problem.held_out([fold.rows for fold in folds], limits)
-    total, visits = np.zeros((members, n)), np.zeros(n)
+    total, visits = np.zeros((n, members)), np.zeros(n)
     fold_loss = np.full((members, len(folds)), np.nan)
-    failed = np.zeros((members, len(folds)), dtype=bool)
-    for number, (fold, residual) in enumerate(zip(folds, held, strict=True)):
+    failed = limits[None, :] < sizes[:, None]
+    weights = root_weights**2
+    for numbers, rows, residual in problem.held_out_batches([fold.rows for fold in folds], limits):
         squared = residual**2
-        total[:, fold.rows] += squared
-        visits[fold.rows] += 1
-        fold_loss[:, number] = weighted_mean(squared, root_weights[fold.rows] ** 2)
-        failed[:, number] = np.isnan(residual).any(axis=1) | (limits[number] < sizes)
+        weight = weights[rows]
+        np.add.at(total, rows, squared.transpose(0, 2, 1))
+        np.add.at(visits, rows, 1)
+        fold_loss[:, numbers] = np.einsum("bmr,br->mb", squared, weight) / weight.sum(axis=1)
+        failed[:, numbers] |= np.isnan(squared).any(axis=2).T
     with np.errstate(invalid="ignore", divide="ignore"):
-        return SchemeErrors(total / visits, fold_loss, failed)
+        return SchemeErrors(total.T / visits, fold_loss, failed)
 
 
 def _levels_kept(folds: Sequence[Fold], level_index: np.ndarray) -> np.ndarray:
     """Number of levels that each fold keeps in."""
     sizes = np.bincount(level_index)
-    kept = np.empty(len(folds), dtype=int)
+    kept = np.full(len(folds), sizes.size)
     for number, fold in enumerate(folds):
-        levels, counts = np.unique(level_index[fold.rows], return_counts=True)
-        kept[number] = sizes.size - np.count_nonzero(counts == sizes[levels])
+        if fold.rows.size == 1:
+            kept[number] -= sizes[level_index[fold.rows[0]]] == 1
+        elif sizes.size > MANY_LEVELS:
+            levels, counts = np.unique(level_index[fold.rows], return_counts=True)
+            kept[number] -= np.count_nonzero(counts == sizes[levels])
+        else:
+            counts = np.bincount(level_index[fold.rows], minlength=sizes.size)
+            kept[number] -= np.count_nonzero((counts == sizes) & (sizes > 0))
     return kept
 
 

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from fitlib.report.quantities import Quantities
-from fitlib.report.rounding import NOTHING, is_number, percent, probability, table_number
+from fitlib.report.rounding import NOTHING, is_number, percent, probability, statistic, table_number
+from fitlib.report.standing import unusable
 from fitlib.report.table import Cell, Table, make_table
 from fitlib.report.words import sentence
 
@@ -19,7 +20,7 @@ def _loss(row: dict, scheme: str | None) -> dict:
 def candidates_table(result: dict, quantities: Quantities) -> Table | None:
     """Every candidate with the reason why it was or was not chosen."""
     deciding = result["settings"].get("loss")
-    rows = []
+    rows, mark = [], unusable(result)
     for row in result["candidates"]:
         loss = _loss(row, deciding)
         first = Cell(row["candidate"], kind="chosen" if row.get("chosen") else "")
@@ -31,12 +32,13 @@ def candidates_table(result: dict, quantities: Quantities) -> Table | None:
                 quantities.loss_cell(loss.get("loss"), loss.get("standard_error")),
                 percent(row.get("bootstrap_share")),
                 _yes(bool(row.get("eligible"))),
-                "chosen" if row.get("chosen") else "no",
+                ("chosen" + (f", {mark}" if mark else "")) if row.get("chosen") else "no",
                 _reason(row),
             ]
         )
     columns = ["=candidate", "#parameters", "=status", quantities.loss_head("deciding loss"), "#bootstrap share",
-               "eligible", "chosen", "reason"]  # fmt: skip
+               "eligible", "chosen",
+               quantities.reason_head([row.get("reason") for row in result["candidates"]])]  # fmt: skip
     note = f"{quantities.loss_note()} Bootstrap share: share of the draws in which the whole rule takes the candidate."
     return make_table("Candidates, all that were declared", columns, rows, note)
 
@@ -51,9 +53,9 @@ def losses_table(result: dict, quantities: Quantities) -> Table | None:
     """Losses of every candidate under every scheme, beside the error at the fitted points."""
     schemes = [scheme["scheme"] for scheme in result.get("schemes") or []]
     deciding = result["settings"].get("loss")
-    heads = [f"#{name} (decides)" if name == deciding else f"#{name}" for name in schemes]
+    heads = [f"{name} (decides)" if name == deciding else name for name in schemes]
     if deciding in schemes:
-        heads.append(f"#{deciding}, interior levels only")
+        heads.append(f"{deciding}, interior levels only")
     rows = []
     for row in result["candidates"]:
         cells = [quantities.loss_cell(row.get("fitted_point_loss"))]
@@ -68,35 +70,40 @@ def losses_table(result: dict, quantities: Quantities) -> Table | None:
         if deciding in schemes:
             cells.append(quantities.loss_cell(_loss(row, deciding).get("interior_loss")))
         rows.append([row["candidate"], *cells])
-    columns = ["=candidate", "#fitted points, not held out", *heads]
+    columns = ["=candidate", *map(quantities.loss_head, ["fitted points, not held out", *heads])]
     return make_table("Losses by scheme", columns, rows, quantities.loss_note())
 
 
 def fits_table(result: dict, quantities: Quantities) -> Table | None:
     """Residuals and lack of fit of every candidate."""
     columns = ["=candidate", "#degrees of freedom", "#levels less parameters",
-               quantities.head("residual standard deviation", quantities.fitted), "#lack of fit F", "#lack of fit p",
+               quantities.head("residual standard deviation", quantities.fitted), "#lack of fit F", "#its p",
+               "#lack of fit F, means of series taken out", "#its p",
                quantities.head("largest mean deviation of a level", quantities.evaluated), "#von Neumann ratio",
                "#its p"]  # fmt: skip
     note = (
         "Lack of fit is compared with pure error, the scatter within levels over all series; levels that carry a "
-        "deviation of their own make F large even for the right function."
+        "deviation of their own make F large even for the right function. The second F compares it with what remains "
+        "when the means of the series are taken out; it stands and decides where whole series differ."
     )
     return make_table("Fits", columns, [_fit_row(row) for row in result["candidates"]], note)
 
 
 def _fit_row(row: dict) -> list[object]:
-    lack, serial = row.get("lack_of_fit") or {}, row.get("serial") or {}
+    lack, within = row.get("lack_of_fit") or {}, row.get("lack_of_fit_within_series") or {}
+    serial = row.get("serial") or {}
     return [
         row["candidate"],
         table_number(row.get("degrees_of_freedom")),
         table_number(row.get("level_degrees_of_freedom")),
         table_number(row.get("residual_standard_deviation"), 5),
         _with_degrees(lack),
-        probability(lack.get("p")),
+        _whole(probability(lack.get("p"))),
+        _with_degrees(within),
+        _whole(probability(within.get("p"))),
         table_number(row.get("misfit"), 3),
-        table_number(serial.get("ratio"), 3),
-        probability(serial.get("p")),
+        statistic(serial.get("ratio")),
+        _whole(probability(serial.get("p"))),
     ]
 
 
@@ -105,7 +112,10 @@ def shapes_table(result: dict, quantities: Quantities) -> Table | None:
     columns = ["=candidate", "#AICc, level means", "#BIC, level means", "#AICc, rows", "#BIC, rows",
                "#condition number", "monotone", quantities.head("excursion between levels", quantities.fitted),
                quantities.head("shift by writing in powers", quantities.fitted)]  # fmt: skip
-    note = "AICc and BIC of rows are shown only; as rules, the criteria work on level means."
+    note = (
+        "AICc and BIC of rows are shown only; as rules, the criteria work on level means. Excursion: how far the "
+        "curve, between two neighbouring levels, leaves the range of what was observed at both."
+    )
     return make_table("Criteria and shape", columns, [_shape_row(row) for row in result["candidates"]], note)
 
 
@@ -116,7 +126,7 @@ def _shape_row(row: dict) -> list[object]:
         *(table_number(row.get(key)) for key in ("aicc_levels", "bic_levels", "aicc", "bic")),
         table_number(row.get("condition_number"), 3),
         Cell(_yes(row.get("monotone")), _turning(row.get("turning_points") or [])),
-        table_number(excursion.get("amount"), 3),
+        "none" if excursion.get("amount") == 0 else table_number(excursion.get("amount"), 3),
         table_number(row.get("power_shift"), 2),
     ]
 
@@ -128,7 +138,12 @@ def _turning(points: list[float]) -> str:
     return f"turns at {shown}" + (f" and {len(points) - 3} more" if len(points) > 3 else "")
 
 
+def _whole(text: str) -> str:
+    """Text that is not broken at its spaces."""
+    return text.replace(" ", "\N{NO-BREAK SPACE}")
+
+
 def _with_degrees(lack: dict) -> Cell:
     if not is_number(lack.get("f")):
         return Cell(NOTHING)
-    return Cell(table_number(lack["f"], 4), f"on {lack.get('numerator_df')} and {lack.get('denominator_df')}")
+    return Cell(statistic(lack["f"]), f"on {lack.get('numerator_df')} and {lack.get('denominator_df')}")

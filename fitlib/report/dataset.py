@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from fitlib.report.candidates import candidates_table, fits_table, losses_table, shapes_table
-from fitlib.report.function import chosen_row, function_part
+from fitlib.report.function import function_part
 from fitlib.report.observations import observations_part
 from fitlib.report.pictures import inline_svg
 from fitlib.report.quantities import Quantities
 from fitlib.report.selection import selection_part
+from fitlib.report.standing import choice_words, chosen_row, is_unstable, stability_words, unusable
 from fitlib.report.table import Table, make_table
 from fitlib.report.words import VERDICT_MEANING, VERDICTS, sentence, spoken
 
@@ -42,7 +43,9 @@ def dataset_part(result: dict, figures: dict[str, str], number: int) -> dict:
         "name": result["dataset"],
         "verdict": {"key": selection["verdict"], "text": VERDICTS[selection["verdict"]]},
         "candidate": selection.get("candidate"),
-        "choice": selection.get("choice"),
+        "choice": choice_words(result),
+        "tie": selection.get("choice") == "tie",
+        "stability": stability_words(result) if is_unstable(result) else "",
         "verdict_reason": sentence(selection.get("verdict_reason")),
         "verdict_meaning": VERDICT_MEANING[selection["verdict"]],
         "choice_reason": _choice_reason(result),
@@ -55,7 +58,7 @@ def dataset_part(result: dict, figures: dict[str, str], number: int) -> dict:
         "shapes": shapes_table(result, quantities),
         "selection": selection_part(result, quantities),
         "observations": observations_part(result, quantities),
-        "figures": _figures(figures, number),
+        "figures": _figures(figures, number, unusable(result)),
         "record": _record(result),
     }
 
@@ -66,13 +69,13 @@ def _choice_reason(result: dict) -> str:
     return sentence(reason.removeprefix("chosen: "))
 
 
-def _figures(figures: dict[str, str], number: int) -> list[dict]:
-    """The figures in the report's order; one that is missing says so."""
+def _figures(figures: dict[str, str], number: int, mark: str) -> list[dict]:
+    """The figures in the report's order; one that is missing says so, and a function not to be used is marked."""
     found = []
     for name, caption in CAPTIONS.items():
         text = figures.get(name)
         svg = inline_svg(text, f"d{number}") if text else ""
-        found.append({"caption": caption, "svg": svg})
+        found.append({"caption": caption + (f" ({mark})" if mark else ""), "svg": svg})
     return found
 
 

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from fitlib.report.attention import attention_part, other_warnings
 from fitlib.report.quantities import Quantities
 from fitlib.report.rounding import NOTHING, is_number, percent, root, squared, table_number, with_unit
+from fitlib.report.standing import choice_cell, expanded_cell, target_cell
 from fitlib.report.table import Cell, Table, make_table
 from fitlib.report.words import (
     CAUTIONS,
@@ -43,14 +45,10 @@ def front_part(bundle: dict, revision: str, changes: list[str]) -> dict:
         "revision": revision,
         "changes": list(changes),
         "alarm": row_wise_alarm(results),
+        "attention": attention_part(results, failures),
         "asked": _asked(study, results),
         "summary": _summary(results, failures),
         "datasets": _datasets(results),
-        "failures": make_table(
-            "Datasets without a result",
-            ["dataset", "what happened"],
-            [[failure["dataset"], failure["message"]] for failure in failures],
-        ),
         "cautions": CAUTIONS,
         "fit_only": FIT_ONLY,
         "record": _record(results),
@@ -60,15 +58,27 @@ def front_part(bundle: dict, revision: str, changes: list[str]) -> dict:
 
 
 def row_wise_alarm(results: list[dict]) -> str:
-    """A sentence for the very top where a scheme splits rows of one level, else nothing."""
-    schemes = [(scheme, result["settings"].get("loss")) for result in results for scheme in result["schemes"]]
-    named = sorted({scheme["scheme"] for scheme, _ in schemes if scheme.get("row_wise")})
-    if not named:
+    """A sentence for the very top where a scheme that splits rows of one level decides, else nothing."""
+    deciding, _ = _row_wise(results)
+    if not deciding:
         return ""
-    deciding = sorted({scheme["scheme"] for scheme, loss in schemes if scheme["row_wise"] and scheme["scheme"] == loss})
-    role = f"of which {listed(deciding)} decides" if deciding else "for comparison only, it does not decide"
-    schemes_word = "scheme" if len(named) == 1 else "schemes"
-    return f"Row-wise folds: {schemes_word} {listed(named)}, {role}. Single rows are left out: {ROW_WISE_WHY}."
+    return f"Row-wise folds decide: scheme {listed(deciding)}. Single rows are left out: {ROW_WISE_WHY}."
+
+
+def _row_wise(results: list[dict]) -> tuple[list[str], list[str]]:
+    """Schemes that split rows of one level: those that decide, and those declared for comparison only."""
+    schemes = [(scheme, result["settings"].get("loss")) for result in results for scheme in result["schemes"]]
+    named = {scheme["scheme"] for scheme, _ in schemes if scheme.get("row_wise")}
+    deciding = {scheme["scheme"] for scheme, loss in schemes if scheme.get("row_wise") and scheme["scheme"] == loss}
+    return sorted(deciding), sorted(named - deciding)
+
+
+def _row_wise_remark(results: list[dict]) -> str:
+    _, compared = _row_wise(results)
+    if not compared:
+        return ""
+    verb = "leaves" if len(compared) == 1 else "leave"
+    return f"{listed(compared)} {verb} out single rows and is for comparison only, it does not decide: {ROW_WISE_WHY}."
 
 
 def _asked(study: dict, results: list[dict]) -> list[tuple[str, str]]:
@@ -84,6 +94,8 @@ def _asked(study: dict, results: list[dict]) -> list[tuple[str, str]]:
         ("candidates", listed(_declared_candidates(study, results)) or "none"),
         ("schemes", "; ".join(_scheme_words(scheme) for scheme in study.get("validation") or []) or "none"),
     ]
+    if remark := _row_wise_remark(results):
+        asked.append(("remark", remark))
     if selection.get("alpha") is not None:
         asked.insert(1, ("alpha of the F tests", table_number(selection["alpha"])))
     if study.get("random_seed") is not None:
@@ -139,13 +151,16 @@ def _summary(results: list[dict], failures: list[dict]) -> str:
 
 def _datasets(results: list[dict]) -> Table | None:
     """One row for each dataset: what was chosen, and how sure that is."""
-    columns = ["dataset", "=chosen", "verdict", "choice", "#root of loss", "#root of outer loss", "=runner-up",
-               "#margin", "#levels", "#series", "#warnings"]  # fmt: skip
+    columns = ["dataset", "=chosen", "verdict", "choice", "target", "#largest expanded uncertainty",
+               "#root of loss", "#root of outer loss", "=runner-up, margin", "#levels, series",
+               "#warnings"]  # fmt: skip
     rows = [_dataset_row(number, result) for number, result in enumerate(results, start=1)]
     note = (
         "Below each root stands the loss itself; a weighted loss has no root. The outer loss, of a loop that repeats "
         "the whole selection without each level, is the one to quote. Margin: how much larger the loss of the "
-        "runner-up is, as a share of the loss of the chosen candidate; below zero where the rule prefers simplicity."
+        "runner-up is, as a share of the loss of the chosen candidate; below zero where the rule prefers simplicity. "
+        "Target: whether misfit and expanded uncertainty of one converted reading stay within it over the interval. "
+        "Expanded uncertainty: of one converted reading, from the fit alone, where it is largest."
     )
     return make_table("Result for each dataset", columns, rows, note)
 
@@ -166,13 +181,13 @@ def _dataset_row(number: int, result: dict) -> list[object]:
         Cell(result["dataset"], target=f"dataset-{number}"),
         selection.get("candidate") or "none",
         Cell(VERDICTS[selection["verdict"]], kind=selection["verdict"]),
-        Cell(selection.get("choice") or NOTHING, kind="tie" if selection.get("choice") == "tie" else ""),
+        choice_cell(result),
+        target_cell(result),
+        expanded_cell(result, quantities.evaluated, quantities.across),
         _loss(quantities, selection.get("loss")),
         _loss(quantities, selection.get("outer_loss")),
-        selection.get("runner_up") or "none",
-        percent(selection.get("margin")),
-        table_number(design.get("levels")),
-        table_number(design.get("series")),
+        Cell(selection.get("runner_up") or "none", percent(selection.get("margin"))),
+        f"{table_number(design.get('levels'))}, {table_number(design.get('series'))}",
         str(len(result.get("warnings") or [])),
     ]
 
@@ -189,10 +204,10 @@ def _record(results: list[dict]) -> Table | None:
 
 
 def _warnings(results: list[dict]) -> list[dict]:
-    """Each warning once, with the datasets it belongs to; row-wise folds first."""
+    """Each warning that is not said above once, with the datasets it belongs to; row-wise folds first."""
     by_text: dict[str, list[tuple[str, str]]] = {}
     for number, result in enumerate(results, start=1):
-        for text in dict.fromkeys(result.get("warnings") or []):
+        for text in dict.fromkeys(other_warnings(result)):
             by_text.setdefault(text, []).append((f"dataset-{number}", result["dataset"]))
     ordered = sorted(by_text, key=lambda text: "row" not in text.split(":")[0].lower() or "wise" not in text)
     return [{"text": text, "datasets": by_text[text], "everywhere": len(by_text[text]) == len(results) > 3}

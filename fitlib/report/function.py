@@ -5,7 +5,8 @@ from __future__ import annotations
 import re
 
 from fitlib.report.quantities import Quantities
-from fitlib.report.rounding import exact, is_number, powered, table_number, text_number, with_unit
+from fitlib.report.rounding import exact, is_number, place_number, powered, table_number, text_number, with_unit
+from fitlib.report.standing import chosen_row, unusable
 from fitlib.report.table import Table, make_table
 
 POINTS = 11  # rows of the table of values
@@ -16,21 +17,17 @@ def function_part(result: dict, quantities: Quantities) -> dict | None:
     row = chosen_row(result)
     if row is None or not row.get("terms"):
         return None
+    mark = unusable(result)
     return {
+        "mark": mark,
         "equation": _equation(row, quantities),
-        "coefficients": _coefficients(row, quantities),
+        "coefficients": _coefficients(row, quantities, mark),
         "shift": _shift(row, quantities),
-        "scaled": _scaled(row),
+        "scaled": _scaled(row, mark),
         "scaled_words": _scaled_words(row),
         "points": _values(result, quantities),
         "excursion": excursion_words(row, quantities),
     }
-
-
-def chosen_row(result: dict) -> dict | None:
-    """The entry of the chosen candidate."""
-    chosen = result["selection"].get("candidate")
-    return next((row for row in result["candidates"] if row["candidate"] == chosen), None)
 
 
 def _power(term: str) -> int | None:
@@ -63,7 +60,11 @@ def _coefficient_unit(term: str, quantities: Quantities) -> str:
     return " · ".join(part for part in (quantities.fitted["unit"], below) if part not in ("", "1")) or "1"
 
 
-def _coefficients(row: dict, quantities: Quantities) -> Table | None:
+def _marked(caption: str, mark: str) -> str:
+    return f"{caption} – {mark}" if mark else caption
+
+
+def _coefficients(row: dict, quantities: Quantities, mark: str) -> Table | None:
     rows = [
         [
             term["term"],
@@ -77,7 +78,8 @@ def _coefficients(row: dict, quantities: Quantities) -> Table | None:
         "All digits are needed: the coefficients depend on each other, and rounding them one by one to their "
         "uncertainties can move the function by more than its uncertainty."
     )
-    return make_table("Coefficients in powers", ["term", "#estimate", "#standard uncertainty", "unit"], rows, note)
+    columns = ["term", "#estimate", "#standard uncertainty", "unit"]
+    return make_table(_marked("Coefficients in powers", mark), columns, rows, note)
 
 
 def _shift(row: dict, quantities: Quantities) -> str:
@@ -101,16 +103,16 @@ def _scaled_words(row: dict) -> str:
     return words + ". The file in functions/ holds it with its covariance."
 
 
-def _scaled(row: dict) -> Table | None:
+def _scaled(row: dict, mark: str) -> Table | None:
     scaled = row.get("scaled")
     if not scaled:
         return None
     rows = [[str(order), exact(value)] for order, value in enumerate(scaled.get("coefficients") or [])]
-    return make_table("Coefficients in the scaled basis", ["order", "#coefficient"], rows)
+    return make_table(_marked("Coefficients in the scaled basis", mark), ["order", "#coefficient"], rows)
 
 
 def _values(result: dict, quantities: Quantities) -> Table | None:
-    """The function with its band and interval at a few places."""
+    """The function at a few places, with its band and interval unless it is inadequate: they do not hold then."""
     curves = result.get("curves") or {}
     grid = curves.get("stimulus") or curves.get("response") or []
     values = (curves.get("candidates") or {}).get(result["selection"].get("candidate"))
@@ -119,9 +121,9 @@ def _values(result: dict, quantities: Quantities) -> Table | None:
     places = sorted({round(step * (len(grid) - 1) / (POINTS - 1)) for step in range(POINTS)})
     columns = [quantities.head(quantities.across["quantity"], quantities.across)]
     columns.append(quantities.head(quantities.fitted["quantity"], quantities.fitted))
-    bands = []
+    bands, inadequate = [], result["selection"]["verdict"] == "inadequate"
     for key, name in (("confidence_band", "confidence band"), ("prediction_interval", "prediction interval")):
-        if band := curves.get(key):
+        if (band := curves.get(key)) and not inadequate:
             share = f"{name} {table_number(band['coverage_probability'])}"
             columns += [quantities.head(f"{share}, {end}", quantities.fitted) for end in ("lower", "upper")]
             bands += [band["lower"], band["upper"]]
@@ -130,15 +132,25 @@ def _values(result: dict, quantities: Quantities) -> Table | None:
         "The confidence band is of the mean response, the prediction interval of one new observation; the numbers "
         "are coverage probabilities of the fit alone, for the candidate taken as given."
     )
-    return make_table("Values of the function", columns, rows, note if bands else "")
+    if inadequate:
+        note = "No confidence band and no prediction interval: neither holds for a function that is inadequate."
+    caption = _marked("Values of the function", unusable(result))
+    return make_table(caption, columns, rows, note if bands or inadequate else "")
 
 
 def excursion_words(row: dict, quantities: Quantities) -> str:
-    """How far the function bends away between levels."""
+    """How far the function bends away between levels, and what that means."""
     excursion = row.get("excursion")
-    if not excursion:
+    if not excursion or not is_number(excursion.get("amount")):
         return ""
+    if excursion["amount"] <= 0:
+        return "Between levels, the curve nowhere leaves the observations of its neighbouring levels (no excursion)."
     amount = with_unit(text_number(excursion.get("amount"), 2), quantities.fitted["unit"])
-    place = with_unit(table_number(excursion.get("stimulus"), 4), quantities.across["unit"])
+    place = with_unit(place_number(excursion.get("stimulus")), quantities.across["unit"])
     size = text_number(excursion.get("in_residual_sd"), 2)
-    return f"Excursion between levels: at most {amount}, at {place} ({size} residual standard deviations)."
+    relative = f", or {size} residual standard deviations" if is_number(excursion.get("in_residual_sd")) else ""
+    return (
+        f"Excursion between levels: at most {amount}{relative}, at {place}. It is how far the curve, between two "
+        "neighbouring levels, leaves the range of what was observed at both; a curve that swings between levels has "
+        "a large one."
+    )

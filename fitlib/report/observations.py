@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from fitlib.report.quantities import Quantities
 from fitlib.report.rounding import NOTHING, table_number
-from fitlib.report.table import Table, limited, make_table
+from fitlib.report.table import Cell, Table, limited, make_table
 from fitlib.report.words import counted, sentence
 
 
@@ -80,13 +80,25 @@ def _suspects(result: dict, quantities: Quantities) -> Table | None:
     return make_table("Suspect observations, kept", columns, rows, note)
 
 
+def _against_interval(point: dict) -> list[object]:
+    """Ends of the prediction interval of a point, and whether it lies within them."""
+    within = point.get("within_prediction_interval")
+    ends = [table_number(point.get(f"prediction_{end}"), 6) for end in ("lower", "upper")]
+    word = NOTHING if within is None else "yes" if within else "outside"
+    return [*ends, Cell(word, kind="tie" if within is False else "")]
+
+
 def _verification(result: dict, quantities: Quantities) -> Table | None:
     """Observations kept out of fitting and choosing, against the chosen function."""
+    points = result.get("verification") or []
+    holds = result["selection"]["verdict"] != "inadequate"
+    known = holds and any(point.get("within_prediction_interval") is not None for point in points)
     rows = [
         [str(point.get("file")), str(point.get("row")), str(point.get("series") or NOTHING),
          *(table_number(point.get(key), 8) for key in ("stimulus", "response", "fitted")),
-         table_number(point.get("residual"), 4), table_number(point.get("evaluated_deviation"), 4)]
-        for point in result.get("verification") or []
+         table_number(point.get("residual"), 4), table_number(point.get("evaluated_deviation"), 4),
+         *(_against_interval(point) if known else ())]
+        for point in points
     ]  # fmt: skip
     rows, note = limited(rows, "verification.csv")
     columns = ["file", "#row", "series", *_value_heads(quantities),
@@ -94,4 +106,11 @@ def _verification(result: dict, quantities: Quantities) -> Table | None:
                quantities.head("residual", quantities.fitted),
                quantities.head("deviation, evaluated", quantities.evaluated)]  # fmt: skip
     note = f"These took no part in fitting or choosing. {note}".strip()
+    if known:
+        columns += [
+            quantities.head(f"prediction interval 0.95, {end}", quantities.fitted) for end in ("lower", "upper")
+        ]
+        columns.append("within")
+    elif points and not holds:
+        note += " No prediction interval: it does not hold for a function that is inadequate."
     return make_table("Verification points", columns, rows, note)

@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+import re
+
 from fitlib.report.rounding import NOTHING, is_number, root, rounded, squared, table_number, text_number, with_unit
-from fitlib.report.table import Cell
+from fitlib.report.table import Cell, Column
+
+_LOSS_IN_WORDS = re.compile(r"\b(?:loss|threshold) \d")
 
 
 class Quantities:
@@ -44,10 +48,19 @@ class Quantities:
         above = table_number(root(loss)[0] if self.plain_root else loss, 4)
         return Cell(above, "; ".join(below + ([extra] if extra else [])))
 
-    def loss_head(self, words: str) -> str:
-        """A column head for cells of `loss_cell`."""
-        unit = self.fitted["unit"] if self.plain_root else squared(self.fitted["unit"])
-        return self.head(f"{'root of ' if self.plain_root else ''}{words}", {"unit": unit})
+    def loss_head(self, words: str) -> Column:
+        """A column head for cells of `loss_cell`, with the units of both lines."""
+        unit = squared(self.fitted["unit"])
+        if not self.plain_root:
+            return Column(self.head(words, {"unit": unit})[1:], "n")
+        below = f"below: loss / {unit}" if unit else "below: loss"
+        return Column(self.head(f"root of {words}", self.fitted)[1:], "n", below)
+
+    def reason_head(self, reasons: list[str]) -> Column:
+        """A column head for reasons; the unit of the losses in them is said where there are any."""
+        unit = squared(self.fitted["unit"])
+        named = unit and any(_LOSS_IN_WORDS.search(reason or "") for reason in reasons)
+        return Column("reason", "", f"losses in {unit}" if named else "")
 
     def loss_note(self) -> str:
         """What the two lines of a `loss_cell` are."""
@@ -68,9 +81,9 @@ class Quantities:
         if not self.plain_root:
             value, error = rounded(loss, standard_error)
             words = with_unit(value, squared(self.fitted["unit"]))
-            return words + (f" (weighted; standard error {error})" if is_number(standard_error) else " (weighted)")
+            return words + (f", weighted, standard error {error}" if is_number(standard_error) else ", weighted")
         value, error = root(loss, standard_error)
         if not is_number(error):
             return with_unit(text_number(value, 2), self.fitted["unit"])
         value, error = rounded(value, error)
-        return f"{with_unit(value, self.fitted['unit'])} (standard error {with_unit(error, self.fitted['unit'])})"
+        return f"{with_unit(value, self.fitted['unit'])}, standard error {with_unit(error, self.fitted['unit'])}"

@@ -8,6 +8,7 @@ from jinja2 import Environment, FileSystemLoader, StrictUndefined
 
 from fitlib.report.dataset import dataset_part
 from fitlib.report.front import front_part
+from fitlib.report.prose import prose
 
 _TEMPLATES = Path(__file__).parent / "templates"
 
@@ -44,6 +45,7 @@ def render_report(bundle: dict, figures: dict[str, dict[str, str]], revision: st
         lstrip_blocks=True,
         keep_trailing_newline=True,
     )
+    environment.filters["prose"] = prose
     parts = [
         dataset_part(result, figures.get(result["file_name"]) or {}, number)
         for number, result in enumerate(bundle["results"], start=1)

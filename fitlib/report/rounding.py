@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import math
+import re
 from decimal import ROUND_HALF_EVEN, Context, Decimal
 
 NOTHING = "–"  # stands where there is no number
 _CONTEXT = Context(prec=60, rounding=ROUND_HALF_EVEN)
+_BRACKETED = re.compile(r"\([^()]*\)")  # one pair of brackets around the whole, as in "(unit not stated)"
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 
 
@@ -25,6 +27,12 @@ def table_number(value: float | None, digits: int = 6) -> str:
     if not is_number(value):
         return NOTHING
     return str(value) if isinstance(value, int) else f"{value:.{digits}g}"
+
+
+def place_number(value: float | None) -> str:
+    """A place on an axis for a sentence: four significant digits, without an exponent up to thousands of millions."""
+    text = table_number(value, 4)
+    return f"{float(text):.0f}" if "e+" in text and abs(value) < 1e10 else text
 
 
 def text_number(value: float | None, digits: int = 2) -> str:
@@ -94,7 +102,17 @@ def probability(value: float | None) -> str:
     """A probability of a test; small ones by their limit."""
     if not is_number(value):
         return NOTHING
-    return "< 0.0001" if value < 0.0001 else f"{value:.2g}"
+    return "< 0.0001" if value < 0.0001 else text_number(value, 2)
+
+
+def equals(text: str) -> str:
+    """A probability behind its sign: ``= 0.31``, ``< 0.0001``."""
+    return text if text.startswith("<") or text == NOTHING else f"= {text}"
+
+
+def statistic(value: float | None) -> str:
+    """A test statistic: four significant digits everywhere."""
+    return text_number(value, 4) if is_number(value) else NOTHING
 
 
 def with_unit(number: str, unit: str) -> str:
@@ -113,7 +131,7 @@ def powered(unit: str, power: int) -> str:
         return ""
     if power == 1:
         return unit
-    return (unit if unit.isalnum() else f"({unit})") + str(power).translate(_SUPERSCRIPT)
+    return (unit if unit.isalnum() or _BRACKETED.fullmatch(unit) else f"({unit})") + str(power).translate(_SUPERSCRIPT)
 
 
 def root(loss: float | None, standard_error: float | None = None) -> tuple[float | None, float | None]:

@@ -2,9 +2,20 @@
 
 from __future__ import annotations
 
-from fitlib.report.function import chosen_row
 from fitlib.report.quantities import Quantities
-from fitlib.report.rounding import NOTHING, is_number, percent, probability, table_number, text_number, with_unit
+from fitlib.report.rounding import (
+    NOTHING,
+    equals,
+    is_number,
+    percent,
+    place_number,
+    probability,
+    statistic,
+    table_number,
+    text_number,
+    with_unit,
+)
+from fitlib.report.standing import chosen_row
 from fitlib.report.table import Cell, Table, limited, make_table
 from fitlib.report.words import (
     END_LEVELS,
@@ -30,6 +41,8 @@ def selection_part(result: dict, quantities: Quantities) -> dict:
         "lack_of_fit": _lack_of_fit(result, quantities),
         "components": _components(result, quantities),
         "components_words": _components_words(result),
+        "direction": _direction(result, quantities),
+        "need": _need(result, quantities),
         "largest_residual": _largest_residual(result, quantities),
     }
 
@@ -164,21 +177,29 @@ def _lack_of_fit(result: dict, quantities: Quantities) -> str:
     row = chosen_row(result)
     if row is None:
         return ""
-    lack, misfit = row.get("lack_of_fit"), row.get("misfit")
+    lack, within, misfit = row.get("lack_of_fit"), row.get("lack_of_fit_within_series"), row.get("misfit")
     size = ""
     if is_number(misfit):
         amount = with_unit(text_number(misfit, 2), quantities.evaluated["unit"])
         size = f" Its size: the largest mean deviation of a level is {amount}."
     if not lack:
         return "Lack of fit was not tested: no level has replicates over the series." + size
+    words = f"Lack of fit against pure error: {_f_test(lack)}."
+    if within:
+        words += (
+            " Whole series differ, which makes pure error large. Against what remains when the means of the series are "
+            f"taken out: {_f_test(within)}; this test decides."
+        )
+    return words + size
+
+
+def _f_test(lack: dict) -> str:
+    if not is_number(lack.get("f")):
+        return f"no F, because replicates agree exactly, on {lack.get('denominator_df')} degrees of freedom"
     return (
-        f"Lack of fit against pure error: F = {table_number(lack.get('f'), 4)} on {lack.get('numerator_df')} and "
-        f"{lack.get('denominator_df')} degrees of freedom, p {_equals(probability(lack.get('p')))}.{size}"
+        f"F = {statistic(lack['f'])} on {lack.get('numerator_df')} and {lack.get('denominator_df')} degrees of "
+        f"freedom, p {equals(probability(lack.get('p')))}"
     )
-
-
-def _equals(text: str) -> str:
-    return text if text.startswith("<") or text == NOTHING else f"= {text}"
 
 
 COMPONENTS = (
@@ -211,11 +232,48 @@ def _components_words(result: dict) -> str:
     return ""
 
 
+def _direction(result: dict, quantities: Quantities) -> str:
+    """Rising less falling, where the observations say which way they were met."""
+    found = (result["selection"].get("components") or {}).get("direction_difference")
+    if not found:
+        return ""
+    size = with_unit(text_number(found.get("largest"), 2), quantities.evaluated["unit"])
+    place = with_unit(place_number(found.get("at")), quantities.stimulus["unit"])
+    test = (
+        f" (F = {statistic(found['f'])}, p {equals(probability(found.get('p')))})" if is_number(found.get("f")) else ""
+    )
+    meaning = (
+        "the directions differ; the function runs between them, and averaging readings does not divide the difference"
+        if found.get("found")
+        else "no difference between the directions was detected"
+    )
+    return f"Rising less falling: the largest difference has a size of {size}, at {place}{test}; {meaning}."
+
+
+def _need(result: dict, quantities: Quantities) -> str:
+    """The largest expanded uncertainty of a converted reading, and the target."""
+    selection, target = result["selection"], result["settings"].get("target")
+    largest, met, words = selection.get("largest_expanded_uncertainty"), selection.get("target_met"), ""
+    if largest and selection["verdict"] != "inadequate":
+        size = with_unit(text_number(largest.get("value"), 2), quantities.evaluated["unit"])
+        place = with_unit(place_number(largest.get("at")), quantities.across["unit"])
+        words = f"Largest expanded uncertainty of one converted reading, from the fit alone: {size}, at {place}. "
+    if met is not None and target:
+        needed = with_unit(table_number(target.get("expanded")), quantities.evaluated["unit"])
+        words += f"The target of {needed} is {'met' if met else 'not met'} over the interval."
+    return words.strip()
+
+
 def _largest_residual(result: dict, quantities: Quantities) -> str:
     largest = result["selection"].get("largest_residual")
     if not largest:
         return ""
     value = with_unit(text_number(largest.get("value"), 2), quantities.fitted["unit"])
     evaluated = with_unit(text_number(largest.get("in_evaluated_unit"), 2), quantities.evaluated["unit"])
-    place = with_unit(table_number(largest.get("stimulus"), 6), quantities.stimulus["unit"])
-    return f"Largest residual: {value} ({evaluated}), at {place}, {largest.get('file')} row {largest.get('row')}."
+    place = with_unit(place_number(largest.get("stimulus")), quantities.stimulus["unit"])
+    converted = f", that is {evaluated} of {quantities.evaluated['quantity']}"
+    same = quantities.evaluated["quantity"] == quantities.fitted["quantity"]
+    return (
+        f"Largest residual: {value}{'' if same else converted}, at {place}, {largest.get('file')} row "
+        f"{largest.get('row')}."
+    )

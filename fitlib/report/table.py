@@ -23,13 +23,16 @@ class Column:
 
     text: str
     kind: str = ""
+    small: str = ""
 
 
 _KINDS = {"#": "n", "=": "id"}
 
 
-def make_column(head: str) -> Column:
+def make_column(head: str | Column) -> Column:
     """A column from its head: ``#`` before it marks numbers, ``=`` marks names."""
+    if isinstance(head, Column):
+        return head
     kind = _KINDS.get(head[:1], "")
     return Column(head[1:] if kind else head, kind)
 
@@ -56,7 +59,11 @@ class Table:
 
 
 def make_table(
-    caption: str, columns: list[str], rows: list[list[object]], note: str = "", foot: list[object] | None = None
+    caption: str,
+    columns: list[str | Column],
+    rows: list[list[object]],
+    note: str = "",
+    foot: list[object] | None = None,
 ) -> Table | None:
     """Build a table; text becomes cells; no rows, no table.
 
@@ -64,7 +71,7 @@ def make_table(
     ----------
     caption, note : str
         See `Table`.
-    columns : list of str
+    columns : list of str or Column
         Heads, see `make_column`.
     rows : list of list
         Text or `Cell` for each column.

@@ -16,6 +16,8 @@ CAUTIONS = (
 )
 
 RULES = {
+    "supported_gain": "the simplest eligible candidate over which no gain of one with more parameters is supported, "
+    "both by the deciding loss (paired by level, end levels half) and by an F test on level means",
     "one_standard_error": "the simplest eligible candidate whose deciding loss is within one standard error of the "
     "smallest one",
     "smallest_loss": "the eligible candidate with the smallest deciding loss",
@@ -27,9 +29,15 @@ RULES = {
 VERDICTS = {"adequate": "✓ adequate", "inadequate": "✗ inadequate", "not_evaluated": "? not evaluated"}
 
 VERDICT_MEANING = {
-    "adequate": "No misfit was found that counts against the function.",
-    "inadequate": "None of the candidates describes these observations well enough: the function must not be used.",
+    "adequate": "No misfit was detected that counts against the function.",
+    "inadequate": "The function misses these observations in a way that matters: it must not be used.",
     "not_evaluated": "The observations do not allow a verdict: the function must not be used until they do.",
+}
+
+# Stands wherever the function of a dataset is shown, so that no table or figure is read without it.
+UNUSABLE = {
+    "inadequate": "verdict inadequate: must not be used",
+    "not_evaluated": "verdict not evaluated: must not be used",
 }
 
 UNITS_LEFT_OUT = {"level": "whole levels", "series": "whole series", "observation": "single rows"}

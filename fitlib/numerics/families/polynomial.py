@@ -108,16 +108,24 @@ class Polynomials:
         Degrees declared.
     fixed_points : sequence of (float, float)
         Points through which every member passes.
+    probes : bool
+        Whether to add the probes.
     """
 
-    def __init__(self, x: np.ndarray, orders: Sequence[int], fixed_points: Sequence[tuple[float, float]] = ()):
+    def __init__(
+        self,
+        x: np.ndarray,
+        orders: Sequence[int],
+        fixed_points: Sequence[tuple[float, float]] = (),
+        probes: bool = True,
+    ):
         lower, upper = float(np.min(x)), float(np.max(x))
         points = tuple((float(a), float(b)) for a, b in fixed_points)
         self.scale = Scale(lower / 2 + upper / 2, upper / 2 - lower / 2, points)
         declared = sorted(set(orders))
-        probes = sorted({order + 2 for order in declared} - set(declared))
+        added = sorted({order + 2 for order in declared} - set(declared)) if probes else []
         members = [Member(order, parameter_count(order, len(points))) for order in declared]
-        members += [Member(order, parameter_count(order, len(points)), probe=True) for order in probes]
+        members += [Member(order, parameter_count(order, len(points)), probe=True) for order in added]
         self.members = tuple(members)
 
     def problem(self, x: np.ndarray, y: np.ndarray, root_weights: np.ndarray) -> LinearProblem:

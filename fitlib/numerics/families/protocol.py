@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -59,8 +59,14 @@ class Problem(Protocol):
     def held_out(self, blocks: Sequence[np.ndarray], limits: np.ndarray | None = None) -> list[np.ndarray]:
         """Residuals (members, rows) of each block when it is left out; nan where a member is not determined."""
 
+    def held_out_batches(self, blocks: Sequence[np.ndarray], limits: np.ndarray | None = None) -> Iterator:
+        """The same in batches of equal length: numbers, rows, residuals (blocks, members, rows)."""
+
     def refit(self, counts: np.ndarray, limits: np.ndarray | None = None) -> np.ndarray:
         """Residuals (members, n, draws) of all observations for fits to resamples."""
+
+    def refit_finite(self, counts: np.ndarray, limits: np.ndarray | None = None) -> tuple[np.ndarray, np.ndarray]:
+        """The same without nan, and which members (members, draws) are determined."""
 
     def resampled_held_out(self, counts: np.ndarray, blocks: Sequence[np.ndarray]) -> np.ndarray:
         """Residuals (members, n, draws) of blocks left out of each resample."""

@@ -99,7 +99,9 @@ def test_units_that_differ_between_datasets_point_to_the_table_of_datasets(bundl
     assert units["observations.csv", "residual"] == "fitted_unit of datasets.csv"
 
 
-@pytest.mark.parametrize("unit, square", [("mA", "mA²"), ("°C", "°C²"), ("m/s", "(m/s)²"), ("1", "1"), ("", "")])
+@pytest.mark.parametrize(
+    "unit, square", [("mA", "mA²"), ("°C", "°C²"), ("m/s", "(m/s)²"), ("(none)", "(none)²"), ("1", "1"), ("", "")]
+)
 def test_a_unit_is_squared_without_doubt(bundle, unit, square):
     for result in bundle["results"]:
         result["settings"]["fitted"]["unit"] = unit
@@ -218,6 +220,35 @@ def test_the_choice_carries_reasons_and_cautions(tables):
     assert row["cautions"] == "Use inside the interval only. | Local codes come first."
     assert row["uncertainty_statement"].startswith("fit-only")
     assert row["largest_residual"] == "-0.01" and row["largest_residual_row"] == "3"
+
+
+def test_lack_of_fit_within_series_stands_beside_the_other(bundle):
+    item = bundle["results"][0]["candidates"][0]
+    item["lack_of_fit_within_series"] = dict(item["lack_of_fit"], f=2.5, p=0.0625)
+    bundle["results"][1]["candidates"][0]["lack_of_fit_within_series"] = None
+    tables = build_tables(bundle)
+    for name, step in (("candidates.csv", 2), ("chosen.csv", 1)):
+        rows = read(tables[name])
+        assert (rows[0]["lack_of_fit_within_series_f"], rows[0]["lack_of_fit_within_series_p"]) == ("2.5", "0.0625")
+        assert (rows[0]["lack_of_fit_f"], rows[step]["lack_of_fit_within_series_f"]) == ("1.125", "")
+
+
+@pytest.mark.parametrize(("met", "cell"), [(True, "true"), (False, "false"), (None, "")])
+def test_the_target_and_the_largest_uncertainty_are_in_the_choice(bundle, met, cell):
+    largest = {"value": 0.0125, "at": 7.5}
+    bundle["results"][0]["selection"].update(target_met=met, largest_expanded_uncertainty=largest)
+    rows = read(build_tables(bundle)["chosen.csv"])
+    assert rows[0]["target_met"] == cell
+    assert rows[0]["largest_expanded_uncertainty"] == "0.0125" and rows[0]["largest_expanded_uncertainty_at"] == "7.5"
+    assert rows[1]["target_met"] == rows[1]["largest_expanded_uncertainty"] == ""
+
+
+def test_verification_points_stand_with_their_prediction_interval(bundle):
+    point = {"prediction_lower": 8.75, "prediction_upper": 8.8125, "within_prediction_interval": True}
+    bundle["results"][0]["verification"][0].update(point)
+    rows = read(build_tables(bundle)["verification.csv"])
+    assert [rows[0][name] for name in point] == ["8.75", "8.8125", "true"]
+    assert [rows[1][name] for name in point] == ["", "", ""]
 
 
 def test_a_dataset_without_any_fit_is_in_every_list(bundle):

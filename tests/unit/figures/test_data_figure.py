@@ -38,6 +38,23 @@ def test_band_and_interval_are_named_apart_with_their_coverage_probability(resul
     assert "prediction interval of one new observation, coverage probability 0.95" in lines
 
 
+def test_an_inadequate_function_is_marked_and_has_no_band(result):
+    result["selection"]["verdict"] = "inadequate"
+    lines = draw(result)
+    assert "LS-101: observations and functions – verdict inadequate" in lines
+    assert any(line.startswith(f"{result['selection']['candidate']} (chosen, verdict inadequate") for line in lines)
+    assert not any("coverage probability" in line for line in lines)
+    assert any(line.startswith("No confidence band and no prediction interval") for line in lines)
+
+
+def test_a_function_that_was_not_evaluated_is_marked_and_its_band_has_a_reserve(result):
+    result["selection"]["verdict"] = "not_evaluated"
+    lines = draw(result)
+    assert any("(chosen, verdict not evaluated" in line for line in lines)
+    assert any("coverage probability" in line for line in lines)
+    assert "Band and interval hold only if the function is adequate, which was not evaluated." in lines
+
+
 def test_axes_carry_quantity_and_unit(result):
     lines = draw(result)
     assert "loop current /\N{NO-BREAK SPACE}mA" in lines

@@ -102,6 +102,17 @@ def test_figures_describe_themselves_in_words(result):
         assert all(described[name] for name in names)
 
 
+@pytest.mark.parametrize(
+    ("verdict", "mark"), [("adequate", None), ("inadequate", "inadequate"), ("not_evaluated", "not evaluated")]
+)
+def test_every_figure_says_when_the_function_must_not_be_used(result, verdict, mark):
+    result["selection"]["verdict"] = verdict
+    for svg in draw_dataset(result).values():
+        titles = [line for line in texts(svg) if line.startswith("LS-101: ")]
+        assert len(titles) == 1
+        assert titles[0].endswith(f" – verdict {mark}") if mark else "verdict" not in "".join(texts(svg))
+
+
 @pytest.mark.parametrize("factor", [1e150, 1e-150, 1e7, 1e-9])
 def test_huge_and_tiny_quantities_are_drawn_as_ordinary_ones_are(result, factor):
     plain = draw_dataset(result)["residuals"]

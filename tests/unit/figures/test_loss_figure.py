@@ -6,7 +6,7 @@ from xml.etree import ElementTree
 
 import pytest
 
-from fitlib.figures.loss import draw_loss
+from fitlib.figures.loss import RULE_NOTES, draw_loss
 from fitlib.figures.style import PAPER, drawing_style
 from fitlib.figures.view import View
 
@@ -75,6 +75,17 @@ def test_without_a_deciding_loss_the_rule_is_named(result, rule):
     lines = draw(result)[1]
     assert f"The rule {rule} decides without a held-out loss." in lines
     assert not any("(decides)" in line for line in lines)
+
+
+@pytest.mark.parametrize("rule", ["supported_gain", "smallest_loss"])
+def test_without_a_threshold_the_rule_is_said_in_words_and_the_choice_is_ringed(result, rule):
+    result["settings"]["rule"] = rule
+    result["selection"]["threshold"] = None
+    lines = draw(result)[1]
+    assert "one-standard-error threshold" not in lines
+    assert f"chosen: {result['selection']['candidate']}" in lines
+    told = " ".join(lines)
+    assert RULE_NOTES[rule] in told
 
 
 def test_losses_of_zero_are_kept_and_told(result):

@@ -23,6 +23,10 @@ def test_text_is_one_line_that_xml_can_hold():
         ("", 3, 1, "10³"),
         ("", 0, 1, ""),
         ("°C", 0, 2, "°C²"),
+        ("(unit not stated)", 0, 1, "(unit not stated)"),
+        ("(unit not stated)", 0, 2, "(unit not stated)²"),
+        ("(unit not stated)", -3, 1, "(10⁻³\N{NO-BREAK SPACE}unit not stated)"),
+        ("(m)/(s)", 0, 1, "((m)/(s))"),
     ],
 )
 def test_units_below_the_fraction_line(unit, power, exponent, text):
@@ -31,6 +35,7 @@ def test_units_below_the_fraction_line(unit, power, exponent, text):
 
 def test_a_quantity_without_unit_has_no_fraction_line():
     assert axis_label("ratio", "") == "ratio"
+    assert broken(axis_label("loss of a level", "(unit not stated)"), 20).split("\n")[0] == "loss of a level"
     assert axis_label("ratio", "", power=-3) == "ratio /\N{NO-BREAK SPACE}10⁻³"
 
 

@@ -15,7 +15,7 @@ import pytest
 
 from fitlib.report import render_report
 
-VOID = {"meta", "br", "hr", "img", "input", "link", "path", "use", "rect"}
+VOID = {"meta", "br", "hr", "img", "input", "link", "path", "use", "rect", "wbr"}
 
 
 class Outline(HTMLParser):
@@ -48,7 +48,7 @@ class Outline(HTMLParser):
 
 def words(page: str) -> str:
     """The text of a page, read as a browser does, without the drawings."""
-    page = re.sub(r"<svg.*?</svg>|<style.*?</style>", "", page, flags=re.S)
+    page = re.sub(r"<svg.*?</svg>|<style.*?</style>|<wbr>", "", page, flags=re.S)
     return " ".join(html.unescape(re.sub(r"<[^>]*>", " ", page)).split())
 
 
@@ -129,9 +129,15 @@ def test_every_candidate_and_every_reason_is_in_the_report(make_bundle, result, 
     assert "More parameters than levels." in text  # the message of the fit, where the reason does not hold it
 
 
-def test_what_was_asked_stands_before_the_results(page):
+def test_the_first_page_puts_first_what_needs_a_person(page):
     text = words(page)
-    assert text.index("What was asked") < text.index("Result for each dataset")
+    heads = ["Needs attention", "Result for each dataset", "Other warnings", "What was asked", "Account of rows"]
+    places = [text.index(head) for head in heads]
+    assert places == sorted(places)
+
+
+def test_what_was_asked_is_told_in_words(page):
+    text = words(page)
     for wanted in ("one_standard_error: the simplest eligible candidate", "levels less parameters at least 3",
                    "strictly monotone", "expanded uncertainty 0.01 m, coverage factor 2", "folds 5, repeats 20",
                    "random seed 20260401"):  # fmt: skip
@@ -158,17 +164,19 @@ def test_warnings_of_all_datasets_are_on_the_first_page_each_once(make_bundle, r
     assert f"{result['warnings'][0]} ( LS-101 , LS-102 )" in front
 
 
-@pytest.mark.parametrize(
-    ("deciding", "phrase"), [(False, "it does not decide"), (True, "of which leave_one_out decides")]
-)
-def test_row_wise_folds_head_the_report(make_bundle, result, drawings, deciding, phrase):
-    if deciding:
-        result["settings"]["loss"] = "leave_one_out"
-    text = words(render_report(make_bundle(result), {"LS-101": drawings}, "rev-0001", []))
-    assert text.index("Row-wise folds: scheme leave_one_out") < text.index("What was asked")
-    assert phrase in text
+def test_row_wise_folds_that_decide_head_the_report(make_bundle, result):
+    result["settings"]["loss"] = "leave_one_out"
+    text = words(render_report(make_bundle(result), {}, "rev-0001", []))
+    assert text.index("Row-wise folds decide: scheme leave_one_out") < text.index("Results")
+
+
+def test_row_wise_folds_for_comparison_are_a_remark(make_bundle, result):
+    page = render_report(make_bundle(result), {}, "rev-0001", [])
+    assert page.count('class="alarm"') == 1  # the caution
+    remark = "leave_one_out leaves out single rows and is for comparison only, it does not decide"
+    assert words(page).index(remark) > words(page).index("What was asked")
     result["schemes"] = [scheme for scheme in result["schemes"] if not scheme["row_wise"]]
-    assert "Row-wise folds" not in words(render_report(make_bundle(result), {}, "rev-0001", []))
+    assert "single rows" not in words(render_report(make_bundle(result), {}, "rev-0001", []))
 
 
 @pytest.mark.parametrize("verdict", ["adequate", "inadequate", "not_evaluated"])
@@ -177,6 +185,7 @@ def test_verdicts_are_told_by_sign_and_word(make_bundle, result, drawings, verdi
     page = render_report(make_bundle(result), {"LS-101": drawings}, "rev-0001", [])
     sign = {"adequate": "✓ adequate", "inadequate": "✗ inadequate", "not_evaluated": "? not evaluated"}[verdict]
     assert page.count(f'<span class="mark {verdict}">{sign}</span>') == 2
+    assert page.count("<h3>Function</h3>") == (verdict == "adequate")
     assert ("must not be used" in words(page)) == (verdict != "adequate")
 
 

@@ -7,13 +7,16 @@ import math
 import pytest
 
 from fitlib.report.rounding import (
+    equals,
     exact,
     percent,
+    place_number,
     powered,
     probability,
     root,
     rounded,
     squared,
+    statistic,
     table_number,
     text_number,
     with_unit,
@@ -89,6 +92,16 @@ def test_shares(share, text):
 def test_probabilities():
     assert probability(5.7e-66) == "< 0.0001"
     assert probability(0.3059) == "0.31"
+    assert probability(1.0) == probability(0.9999) == "1.0"
+    assert probability(0.3) == "0.30"
+    assert (equals("0.31"), equals("< 0.0001"), equals("–")) == ("= 0.31", "< 0.0001", "–")
+
+
+@pytest.mark.parametrize(
+    ("value", "text"), [(1.2126461988, "1.213"), (12345.6, "12350"), (1, "1.000"), (0.94671, "0.9467"), (None, "–")]
+)
+def test_statistics_have_four_digits_whatever_their_size(value, text):
+    assert statistic(value) == text
 
 
 def test_units_to_a_power():
@@ -99,6 +112,18 @@ def test_units_to_a_power():
         "m⁻²",
         "m",
     )
+
+
+def test_a_unit_in_brackets_gets_no_second_pair():
+    assert squared("(unit not stated)") == "(unit not stated)²"
+    assert squared("(m)/(s)") == "((m)/(s))²"
+
+
+@pytest.mark.parametrize(
+    ("value", "text"), [(1346250.0, "1346000"), (3e6, "3000000"), (6.538461, "6.538"), (10.0, "10"), (2e12, "2e+12")]
+)
+def test_places_have_no_exponent_that_is_not_needed(value, text):
+    assert place_number(value) == text
 
 
 def test_the_error_of_a_root_is_that_of_first_order():
