@@ -9,7 +9,7 @@ from fitlib.analysis.dataset import DatasetArrays, make_arrays
 from fitlib.analysis.evaluated import in_evaluated_unit, needs_inversion
 from fitlib.analysis.fits import make_candidates
 from fitlib.analysis.function_record import function_record
-from fitlib.analysis.in_use import make_curves, need_met, verification_table
+from fitlib.analysis.in_use import make_curves, need_met, verdict_of, verification_table
 from fitlib.analysis.jsonable import number, numbers
 from fitlib.analysis.warnings import collect_warnings
 from fitlib.numerics.diagnostics import studentized_residuals, suspects
@@ -166,7 +166,7 @@ def _observation_table(observations, data: DatasetArrays, candidates: CandidateS
     flag = [""] * count
     if chosen is not None:
         _fill_used(values, flag, data, candidates, chosen)
-        _fill_verification(values, observations, chosen, data.swapped)
+        _fill_verification(values, observations, chosen, data)
     return table | {name: numbers(values[name]) for name in columns} | {"flag": flag}
 
 
@@ -185,15 +185,21 @@ def _fill_used(values: dict, flag: list[str], data: DatasetArrays, candidates: C
         flag[row] = "suspect"
 
 
-def _fill_verification(values: dict, observations, chosen: dict, swapped: bool) -> None:
-    rows = np.array([k for k, state in enumerate(observations.state) if state == "verification"], dtype=int)
+def _fill_verification(values: dict, observations, chosen: dict, data: DatasetArrays) -> None:
+    """Fitted values of verification points; none outside the measuring interval, where there is no conversion."""
+    states = enumerate(observations.state)
+    rows = np.array([k for k, state in states if state == "verification" and _inside(observations, k, data)], dtype=int)
     if not rows.size:
         return
     stimulus = np.asarray(observations.stimulus, dtype=float)[rows]
     response = np.asarray(observations.response, dtype=float)[rows]
-    x, y = (response, stimulus) if swapped else (stimulus, response)
+    x, y = (response, stimulus) if data.swapped else (stimulus, response)
     values["fitted"][rows] = restore(chosen["scaled"]).evaluate(x)
     values["residual"][rows] = y - values["fitted"][rows]
+
+
+def _inside(observations, row: int, data: DatasetArrays) -> bool:
+    return verdict_of(float(observations.stimulus[row]), data) == "within_interval"
 
 
 def _candidate(record: dict, schemes: list[dict], selection: dict) -> dict:

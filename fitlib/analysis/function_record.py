@@ -11,8 +11,12 @@ from fitlib.analysis.dataset import DatasetArrays
 from fitlib.analysis.words import figure
 from fitlib.numerics.families import restore
 from fitlib.numerics.inverse import inverse_evaluation
+from fitlib.numerics.shortened import shortest
+from fitlib.numerics.uncertainty import mean_standard_uncertainty
 from fitlib.numerics.weighting import spread
 
+#: Points at which a shortened form is compared with the issued function.
+SHORT_FORM_POINTS = 65
 #: Test vectors inside the interval, both ends included.
 VECTORS_INSIDE = 21
 FIT_ONLY = "fit-only uncertainty: not a complete measurement uncertainty"
@@ -57,6 +61,7 @@ def function_record(study, dataset, data: DatasetArrays, chosen: dict, selection
         "level_standard_deviation": chosen["level_standard_deviation"],
         "power_coefficients": chosen["terms"],
         "power_shift": chosen["power_shift"],
+        "short_form": _short_form(study, dataset, curve, data, chosen),
         "verdict": selection["verdict"],
         "verdict_reason": selection["verdict_reason"],
         "choice": selection["choice"],
@@ -66,6 +71,20 @@ def function_record(study, dataset, data: DatasetArrays, chosen: dict, selection
         "test_vectors": _test_vectors(dataset, curve, data, chosen["monotone"]),
     }
     return record | {"digest": record_digest(record)}
+
+
+def _short_form(study, dataset, curve, data: DatasetArrays, chosen: dict) -> dict | None:
+    """Fewest digits of the power coefficients that move no converted value noticeably."""
+    estimates = [term["estimate"] for term in chosen["terms"]]
+    if None in estimates or chosen["observation_variance"] is None or chosen["exact"]:
+        return None
+    x = np.linspace(*data.x_interval, SHORT_FORM_POINTS)
+    covariance = np.array(chosen["covariance"], dtype=float)
+    variance = chosen["observation_variance"] * observation_spread(study, dataset, curve, x, data) ** 2
+    form = shortest(curve, estimates, x, np.sqrt(mean_standard_uncertainty(curve, covariance, x) ** 2 + variance))
+    if form is None:
+        return None
+    return {"digits": form.digits, "coefficients": list(form.coefficients), "largest_share": float(form.largest_share)}
 
 
 def record_digest(record: dict) -> str:

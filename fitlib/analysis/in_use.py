@@ -91,21 +91,39 @@ def verification_table(rows: dict, chosen: dict | None, data: DatasetArrays, stu
     which = [k for k, state in enumerate(rows["state"]) if state == "verification"]
     if chosen is None or not which:
         return []
+    verdicts = [verdict_of(rows["stimulus"][k], data) for k in which]
     x = np.array([rows["response" if data.swapped else "stimulus"][k] for k in which], dtype=float)
     y = np.array([rows["stimulus" if data.swapped else "response"][k] for k in which], dtype=float)
     residual = np.array([rows["residual"][k] for k in which], dtype=float)
     converted = in_evaluated_unit(restore(chosen["scaled"]), dataset, x, residual)
     columns = ("file", "row", "series", "stimulus", "response", "fitted", "residual")
     table = [
-        {name: rows[name][k] for name in columns} | {"evaluated_deviation": number(value)}
-        for k, value in zip(which, converted, strict=True)
+        {name: rows[name][k] for name in columns} | {"evaluated_deviation": number(value), "verdict": verdict}
+        for k, value, verdict in zip(which, converted, verdicts, strict=True)
     ]
     known = chosen["observation_variance"] is not None
     limits = _interval(chosen, data, study, dataset, x) if known else Band(x * np.nan, x * np.nan, COVERAGE_PROBABILITY)
     for row, value, lower, upper in zip(table, y, limits.lower, limits.upper, strict=True):
-        row["prediction_lower"], row["prediction_upper"] = number(lower), number(upper)
-        row["within_prediction_interval"] = bool(lower <= value <= upper) if known else None
+        usable = known and row["verdict"] == "within_interval"
+        row["prediction_lower"], row["prediction_upper"] = (number(lower), number(upper)) if usable else (None, None)
+        row["within_prediction_interval"] = bool(lower <= value <= upper) if usable else None
     return table
+
+
+def verdict_of(stimulus: float, data: DatasetArrays) -> str:
+    """Whether a stimulus lies in the measuring interval, in the words of a conversion.
+
+    Parameters
+    ----------
+    stimulus : float
+    data : DatasetArrays
+
+    Returns
+    -------
+    str
+    """
+    lower, upper = data.interval
+    return "below_range" if stimulus < lower else "above_range" if stimulus > upper else "within_interval"
 
 
 def need_met(chosen: dict | None, data: DatasetArrays, study, dataset) -> dict:

@@ -81,7 +81,7 @@ def _smooth_signs(record: dict) -> list[str]:
     serial = record["serial"]
     if serial is not None and serial["p"] < SERIAL_PROBABILITY:
         signs.append(
-            f"the level residuals follow one another (von Neumann ratio {figure(serial['ratio'], 3)}, "
+            f"the level residuals follow one another (von Neumann ratio {serial['ratio']:.2f}, "
             f"{probability(serial['p'])})"
         )
     return signs

@@ -140,15 +140,17 @@ def _need(result: dict) -> list[str]:
 
 
 def _verification(result: dict) -> list[str]:
-    points = result["verification"]
+    points, lines = result["verification"], []
+    beyond = [point for point in points if point["verdict"] != "within_interval"]
+    if beyond:
+        lines.append(f"not evaluated, as outside the measuring interval: {counted(len(beyond), 'verification point')}")
     outside = [point for point in points if point["within_prediction_interval"] is False]
-    if not outside:
-        return []
-    named = listed([f"{point['file']} row {point['row']}" for point in outside[:5]])
-    more = f" and {len(outside) - 5} more" if len(outside) > 5 else ""
-    return [
-        f"{len(outside)} of {len(points)} verification points lie outside the 95 % prediction interval: {named}{more}"
-    ]
+    if outside:
+        named = listed([f"{point['file']} row {point['row']}" for point in outside[:5]])
+        more = f" and {len(outside) - 5} more" if len(outside) > 5 else ""
+        share = f"{len(outside)} of {len(points)} verification points"
+        lines.append(f"{share} lie outside the 95 % prediction interval: {named}{more}")
+    return lines
 
 
 def _shape(result: dict, chosen: dict) -> list[str]:

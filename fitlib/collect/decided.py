@@ -102,10 +102,15 @@ CHOSEN = (
 
 COMPONENTS = (
     Column("dataset", "text", "", "The instrument or curve."),
-    Column("component", "text", "", "repeatability, pure_error or level_deviation."),
+    Column("component", "text", "", "repeatability, pure_error, level_deviation or series_deviation."),
     Column("value", "number", "fitted", "Standard deviation in the fitted quantity; empty where there is none."),
     Column("value_evaluated", "number", "evaluated", "The same, in the quantity that the user wants."),
-    Column("found", "boolean", "", "Whether levels carry a deviation of their own (level_deviation only)."),
+    Column(
+        "found",
+        "boolean",
+        "",
+        "Whether levels, or whole series, carry a deviation of their own (these two components only).",
+    ),
 )
 
 _COUNTS = ("read", "used", "excluded", "verification", "rejected")
@@ -199,12 +204,12 @@ def _chosen(result: dict) -> dict:
 def _components(results: list[dict]) -> Iterator[dict]:
     for result in results:
         components = result["selection"]["components"] or {}
-        for name in ("repeatability", "pure_error", "level_deviation"):
+        for name in ("repeatability", "pure_error", "level_deviation", "series_deviation"):
             if name in components:
                 yield {
                     "dataset": result["dataset"],
                     "component": name,
                     "value": components[name],
                     "value_evaluated": components.get(f"{name}_evaluated"),
-                    "found": components.get("level_deviation_found") if name == "level_deviation" else None,
+                    "found": components.get(f"{name}_found"),
                 }

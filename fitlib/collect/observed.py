@@ -51,6 +51,7 @@ VERIFICATION = (
     Column("series", "text", "", "One pass through the levels, as the file labels it."),
     Column("stimulus", "number", "stimulus", "Reference quantity as read."),
     Column("response", "number", "response", "What the instrument gave, as read."),
+    Column("verdict", "text", "", "within_interval; or below_range or above_range: then nothing is evaluated."),
     Column("fitted", "number", "fitted", "Value of the chosen candidate."),
     Column("residual", "number", "fitted", "Observed less fitted value; the point took no part in the fit."),
     Column("evaluated_deviation", "number", "evaluated", "The same deviation in the quantity that the user wants."),

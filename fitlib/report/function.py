@@ -22,7 +22,7 @@ def function_part(result: dict, quantities: Quantities) -> dict | None:
         "mark": mark,
         "equation": _equation(row, quantities),
         "coefficients": _coefficients(row, quantities, mark),
-        "shift": _shift(row, quantities),
+        "shift": " ".join(part for part in (_shift(row, quantities), _short_form(result)) if part),
         "scaled": _scaled(row, mark),
         "scaled_words": _scaled_words(row),
         "points": _values(result, quantities),
@@ -88,6 +88,18 @@ def _shift(row: dict, quantities: Quantities) -> str:
         return ""
     amount = with_unit(text_number(shift, 2), quantities.fitted["unit"])
     return f"Written in powers, the function shifts by at most {amount} against the issued one over the interval."
+
+
+def _short_form(result: dict) -> str:
+    """The fewest digits that a program with few digits may use."""
+    form = (result.get("function") or {}).get("short_form")
+    if not form:
+        return ""
+    terms = ", ".join(f"c{power} = {word}" for power, word in enumerate(form["coefficients"]))
+    return (
+        f"Where fewer digits have to do, {form['digits']} are enough: with {terms} no converted value moves by more than "
+        "1/20 of its standard uncertainty. With fewer digits it would."
+    )
 
 
 def _scaled_words(row: dict) -> str:

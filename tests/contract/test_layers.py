@@ -37,6 +37,7 @@ NUMERIC_STANDARD = {
     "contextlib",
     "dataclasses",
     "enum",
+    "decimal",
     "fractions",
     "functools",
     "itertools",
