@@ -128,7 +128,8 @@ def sentence(answer, tie: bool) -> str:
         return f"{given}: {answer.verdict}: {answer.note}{mark}"
     value, expanded = rounded(answer.value, answer.expanded_uncertainty)
     percent = f"{100 * answer.coverage_probability:g} %"
-    basis = f"k = {answer.coverage_factor:.2f}, {percent}, mean of {counted(answer.readings, 'reading')}"
+    read = "one reading" if answer.readings == 1 else f"mean of {answer.readings} readings"
+    basis = f"k = {answer.coverage_factor:.2f}, {percent}, {read}"
     expanded = with_unit(expanded, answer.unit)
     return f"{given}: {with_unit(value, answer.unit)}, expanded uncertainty {expanded} ({basis}){mark}"
 

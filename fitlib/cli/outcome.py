@@ -10,14 +10,15 @@ from fitlib.cli.output import align, counted, shorten
 LISTED = 40  # datasets shown one by one; of more, those that need a person come first
 WARNED = 10  # warnings of the check that are told again
 NAMED = 5  # datasets named where many have the same steps
-HEADER = ("dataset", "candidate", "verdict", "choice", "loss", "outer_loss", "runner_up", "margin")
-NUMBERS = {"loss", "outer_loss", "margin"}
+HEADER = ("dataset", "candidate", "verdict", "choice", "loss", "outer_loss", "runner_up", "margin", "warnings")
+NUMBERS = {"loss", "outer_loss", "margin", "warnings"}
+LONGEST_REASON = 300
 ABSENT = "-"
 
 
 def needs_person(row) -> bool:
     """Whether somebody has to look at this dataset."""
-    return row.verdict != "adequate" or row.choice == "tie"
+    return row.verdict != "adequate" or row.choice == "tie" or row.target_met is False
 
 
 def describe_run(summary) -> list[str]:
@@ -37,8 +38,16 @@ def describe_run(summary) -> list[str]:
     if len(shown) < len(summary.rows):
         rest = counted(len(summary.rows) - len(shown), "more dataset")
         lines.append(f"and {rest}; all {len(summary.rows)} are in {table}")
+    lines += [f"{shorten(row.dataset, 40)}: {reason}" for row in shown if (reason := _reason(row))]
     lines += ["", _counts(summary.rows)]
     return [*lines, *_warnings(summary.warnings), _work(summary), f"revision: {summary.path}"]
+
+
+def _reason(row) -> str:
+    """Why somebody has to look at this dataset, on one line; a tie stands in the table, and the report tells of it."""
+    parts = [f"{row.verdict}: {row.reason}".rstrip(": ")] if row.verdict != "adequate" else []
+    parts += ["the target uncertainty is not met"] if row.target_met is False else []
+    return shorten(" ".join("; ".join(parts).split()), LONGEST_REASON)
 
 
 def _warnings(warnings) -> list[str]:
@@ -65,6 +74,7 @@ def _cells(row) -> tuple[str, ...]:
         _number(row.outer_loss),
         row.runner_up or ABSENT,
         _number(row.margin, 3),
+        str(row.warnings),
     )
 
 
@@ -77,6 +87,8 @@ def _counts(rows) -> str:
     parts = [f"{verdicts[name]} {name}" for name in ("adequate", "inadequate", "not_evaluated") if verdicts[name]]
     ties = sum(row.choice == "tie" for row in rows)
     parts += [counted(ties, "tie")] if ties else []
+    missed = sum(row.target_met is False for row in rows)
+    parts += [f"{missed} above the target uncertainty"] if missed else []
     return f"{counted(len(rows), 'dataset')}: {', '.join(parts)}"
 
 
@@ -102,6 +114,8 @@ def describe_dry_run(plan) -> list[str]:
     if plan.unchanged:
         return [*lines, f"{plan.study}: nothing to do, {plan.revision} holds these results"]
     lines += [f"{plan.study}: {reason}" for reason in plan.reasons]
+    if plan.blocked:
+        return [*lines, f"{plan.study}: nothing else has changed"]
     if not plan.steps:
         return [*lines, f"{plan.study}: every step is stored; a run would publish them"]
     groups: dict[tuple[str, ...], list[str]] = {}

@@ -7,8 +7,8 @@ import os
 
 from fitlib.cli.arguments import add_command, available_cores, positive_whole_number, require_file
 from fitlib.cli.outcome import describe_dry_run, describe_run
-from fitlib.cli.output import say
-from fitlib.errors import DecisionError, InputError, Problem
+from fitlib.cli.output import counted, say
+from fitlib.errors import DecisionError, InputError, Problem, VerificationError
 
 
 def add(commands) -> None:
@@ -32,7 +32,9 @@ def add(commands) -> None:
         help="jobs into which the datasets are dealt (default: 16)",
     )
     parser.add_argument(
-        "--strict", action="store_true", help="status 4 when a verdict is not adequate or a choice is a tie"
+        "--strict",
+        action="store_true",
+        help="status 4 when a verdict is not adequate, a choice is a tie, or the target uncertainty is not met",
     )
     parser.add_argument("--fresh", action="store_true", help="compute everything again, whatever is stored")
     parser.add_argument("--dry-run", action="store_true", help="tell what would be computed, and why; write nothing")
@@ -59,9 +61,16 @@ def _dry_run(arguments, batches: dict[str, int]) -> int:
     from fitlib.engine import dry_run
 
     _refuse_without_effect(arguments)
-    for line in describe_dry_run(dry_run(arguments.study, arguments.results, **batches)):
+    plan = dry_run(arguments.study, arguments.results, **batches)
+    for line in describe_dry_run(plan):
         say(line)
+    _require_unaltered(plan.altered)
     return 0
+
+
+def _require_unaltered(altered: str) -> None:
+    if altered:
+        raise VerificationError(altered)
 
 
 def _refuse_without_effect(arguments) -> None:
@@ -89,6 +98,7 @@ def _run(arguments, batches: dict[str, int]) -> int:
     )
     for line in describe_run(summary):
         say(line)
+    _require_unaltered(summary.altered)
     if arguments.strict:
         _require_decided(summary.rows)
     return 0
@@ -98,6 +108,8 @@ def _require_decided(rows) -> None:
     """In strict mode a person has to look before work goes on."""
     verdicts = sum(row.verdict != "adequate" for row in rows)
     ties = sum(row.choice == "tie" for row in rows)
-    found = [f"{verdicts} not adequate"] * bool(verdicts) + [f"{ties} with a tie"] * bool(ties)
+    missed = sum(row.target_met is False for row in rows)
+    counts = ((verdicts, "not adequate"), (ties, "with a tie"), (missed, "above the target uncertainty"))
+    found = [f"{count} {what}" for count, what in counts if count]
     if found:
-        raise DecisionError(f"of {len(rows)} datasets, {' and '.join(found)}: a person has to decide")
+        raise DecisionError(f"of {counted(len(rows), 'dataset')}, {' and '.join(found)}: a person has to decide")

@@ -185,7 +185,7 @@ def load_function(path) -> CalibrationFunction:
     Raises
     ------
     InputError
-        The file cannot be read, is damaged, contradicts itself, or has a format that is not known.
+        The file cannot be read, is damaged, was changed, contradicts itself, or has a format that is not known.
     """
     record = read_function_record(str(path))
     try:

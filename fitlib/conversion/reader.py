@@ -7,9 +7,13 @@ import math
 from collections.abc import Callable
 from pathlib import Path
 
+from fitlib.conversion.seal import KEY, seal_fault
 from fitlib.errors import InputError, Problem
 
 FORMAT = 1
+#: Data are read between 1e-60 and 1e60; what is fitted to them may be smaller by their rounding; variances are squares.
+SMALLEST, LARGEST = 1e-80, 1e60
+LEAST_FREEDOM = 0.5  # Student's t has no use below; degrees of freedom that were evaluated are 1 or more
 LARGEST_FILE = 20_000_000  # bytes; a function file has a few thousand
 MISSING = object()
 
@@ -31,13 +35,11 @@ def _constant(word: str):
     raise _Damaged(f"{word} is not a number")
 
 
-def _number(value) -> bool:
+def _number(value, largest: float = LARGEST) -> bool:
+    """Whether this is a number of a size with which conversions compute."""
     if isinstance(value, bool) or not isinstance(value, (int, float)):
         return False
-    try:
-        return math.isfinite(value)
-    except OverflowError:  # a whole number too large for a float
-        return False
+    return math.isfinite(value) and abs(value) <= largest if isinstance(value, float) else abs(value) <= largest
 
 
 def _numbers(value) -> bool:
@@ -45,15 +47,23 @@ def _numbers(value) -> bool:
 
 
 def _a_number(value) -> str:
-    return "" if _number(value) else "a number"
+    return "" if _number(value) else f"a number of at most {LARGEST:g} in size"
 
 
 def _positive(value) -> str:
-    return "" if _number(value) and value > 0 else "a number above 0"
+    return "" if _number(value) and value >= SMALLEST else f"a number from {SMALLEST:g} to {LARGEST:g}"
 
 
 def _not_negative(value) -> str:
-    return "" if _number(value) and value >= 0 else "a number of 0 or more"
+    return (
+        ""
+        if _number(value) and (value == 0 or value >= SMALLEST)
+        else f"0, or a number from {SMALLEST:g} to {LARGEST:g}"
+    )
+
+
+def _freedom(value) -> str:
+    return "" if _number(value) and value >= LEAST_FREEDOM else f"a number from {LEAST_FREEDOM:g} to {LARGEST:g}"
 
 
 def _text(value) -> str:
@@ -90,8 +100,9 @@ def _points(value) -> str:
 
 
 def _matrix(value) -> str:
-    ok = isinstance(value, list) and value and all(_numbers(row) and len(row) == len(value) for row in value)
-    return "" if ok else "a square table of numbers"
+    ok = isinstance(value, list) and value and all(isinstance(row, list) and len(row) == len(value) for row in value)
+    ok = ok and all(_number(cell, LARGEST**2) for row in value for cell in row)
+    return "" if ok else f"a square table of numbers of at most {LARGEST**2:g} in size"
 
 
 def _vector(value) -> bool:
@@ -129,7 +140,7 @@ CHECKS: dict[str, Callable[[object], str]] = {
     "scaled.fixed_points": _points,
     "scaled.coefficients": _coefficients,
     "covariance": _matrix,
-    "degrees_of_freedom": _positive,
+    "degrees_of_freedom": _freedom,
     "reading_standard_deviation": _not_negative,
     "level_standard_deviation": _not_negative,
     "verdict": _one_of("adequate", "inadequate", "not_evaluated"),
@@ -154,7 +165,8 @@ def _shown(value) -> str:
 
 
 def _problems(record: dict, path: str) -> list[Problem]:
-    problems = []
+    sealed = seal_fault(record)
+    problems = [Problem(file=path, key=KEY, message=sealed)] if sealed else []
     for key, check in CHECKS.items():
         value = _find(record, key)
         if value is MISSING:
@@ -231,7 +243,8 @@ def read_function_record(path: str) -> dict:
     Raises
     ------
     InputError
-        The file cannot be read, is damaged, or has a format that this version does not know.
+        The file cannot be read, is damaged, was changed after it was issued, or has a format that this version does not
+        know.
     """
     record = _decode(_load(path), path)
     if record["format"] != FORMAT or isinstance(record["format"], bool):

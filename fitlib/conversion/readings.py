@@ -121,11 +121,14 @@ def _blank(cells: list[str]) -> bool:
     return not any(cell.strip() for cell in cells)
 
 
-def _check_header(header: list[str], path: str) -> None:
+def _check_header(header: list[str], line: int, path: str, decimal: str) -> None:
     names = [name.strip() for name in header]
+    if all(parse_number(name, decimal) is not None for name in names if name):
+        message = "the first row holds numbers and no names; a header row is expected, with a name for each column"
+        raise InputError([Problem(path, message, line=line)])
     twice = sorted({name for name in names if name and names.count(name) > 1})
     if twice:
-        raise InputError([Problem(path, f"the header has {', '.join(map(repr, twice))} more than once", line=1)])
+        raise InputError([Problem(path, f"the header has {', '.join(map(repr, twice))} more than once", line=line)])
 
 
 def _choose_column(header: list[str], rows: list[list[str]], wanted: str | None, decimal: str, path: str) -> int:
@@ -162,7 +165,7 @@ def _read_row(number: int, cells: list[str], width: int, index: int, decimal: st
             other = "comma" if decimal == "point" else "point"
             readable = parse_number(cells[index], other) is not None
             hint = f"; for a decimal {other} give --decimal {other}" if readable else ""
-            fault = f"{cells[index].strip()[:40]!r} is not a number{hint}"
+            fault = f"the cell holds {cells[index].strip()[:40]!r}, which is not a number{hint}"
     return Row(number, tuple(cells), float("nan") if reading is None else reading, fault)
 
 
@@ -200,8 +203,8 @@ def read_readings(
     filled = [(number, cells) for number, cells in lines if not _blank(cells)]
     if len(filled) < 2:
         raise _refusal(path, "has no readings; expected a header row and one row for each reading")
-    header = filled[0][1]
-    _check_header(header, path)
+    line, header = filled[0]
+    _check_header(header, line, path, decimal)
     index = _choose_column(header, [cells for _, cells in filled[1:]], column, decimal, path)
     rows = tuple(_read_row(number, cells, len(header), index, decimal) for number, cells in filled[1:])
     blank = tuple(number for number, cells in lines if _blank(cells))

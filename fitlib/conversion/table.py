@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, replace
@@ -21,7 +22,9 @@ COLUMNS = (
     "choice",
     "note",
 )
-SIGNS = ("=", "+", "-", "@", "\t", "\r")  # a spreadsheet would take such a text for a formula
+# A spreadsheet would take such a text for a formula, the wide signs in some locales; apostrophes before the sign count
+# too, so that a cell can be turned back into its text without doubt.
+_FORMULA = re.compile("[' ]*[=+\\-@\t\r\n\uff1d\uff0b\uff0d\uff20]")
 
 
 @dataclass(frozen=True)
@@ -56,7 +59,7 @@ def guard(cell: str) -> str:
         With a leading ``'`` when it is a text that starts with a sign; numbers are left alone.
     """
     is_number = parse_number(cell) is not None or parse_number(cell, "comma") is not None
-    return f"'{cell}" if cell.startswith(SIGNS) and not is_number else cell
+    return f"'{cell}" if _FORMULA.match(cell) and not is_number else cell
 
 
 def _cell(value: object) -> str:
@@ -145,5 +148,5 @@ def answers_table(conversions: Sequence[Conversion], given_as: str, choice: str 
     -------
     ConversionTable
     """
-    rows = [[repr(each.given), each.given_unit] for each in conversions]
+    rows = [[repr(each.given), guard(each.given_unit)] for each in conversions]
     return _table([given_as, f"{given_as}_unit"], rows, list(conversions), choice)

@@ -1,4 +1,7 @@
-"""Numbers and verdicts in plain words."""
+"""Numbers and verdicts in plain words.
+
+A note begins with a word: a cell that began with the sign of a number would be guarded as a formula.
+"""
 
 from __future__ import annotations
 
@@ -56,13 +59,17 @@ def _apart(value: float, other: float) -> int:
     return next((d for d in range(6, 17) if f"{value:.{d}g}" != f"{other:.{d}g}"), 17)
 
 
+def _of(question: Question, value: float, digits: int = 6) -> str:
+    return quoted(value, question.given_unit, digits)
+
+
 def end_note(question: Question, response: float, stimulus: float, agrees: bool) -> str:
     """Say that a response lies beyond an end, and whether it agrees with it."""
     digits = _apart(question.given, response)
-    given, end = (quoted(number, question.given_unit, digits) for number in (question.given, response))
+    given, end = (_of(question, number, digits) for number in (question.given, response))
     agreement = "agrees" if agrees else "does not agree"
     return (
-        f"{given} lies beyond {end}, the response at {quoted(stimulus, question.unit)}; "
+        f"response {given} lies beyond {end}, the response at {quoted(stimulus, question.unit)}; "
         f"it {agreement} with that end within its prediction interval"
     )
 
@@ -71,12 +78,12 @@ def interval_note(question: Question, end: float) -> str:
     """Say that a stimulus lies outside the measuring interval."""
     digits = _apart(question.given, end)
     side = "below the lower" if question.given < end else "above the upper"
-    given, bound = (quoted(number, question.given_unit, digits) for number in (question.given, end))
-    return f"{given} lies {side} end of the measuring interval, {bound}"
+    given, bound = (_of(question, number, digits) for number in (question.given, end))
+    return f"stimulus {given} lies {side} end of the measuring interval, {bound}"
 
 
 def not_unique_note(question: Question, competing, turning_points) -> str:
     """Name the values that share a response, and where the function turns."""
     values = " and ".join(quoted(value, question.unit) for value in competing)
     turns = " and ".join(quoted(point, question.unit) for point in turning_points)
-    return f"{quoted(question.given, question.given_unit)} belongs to {values}; the function turns at {turns}"
+    return f"response {_of(question, question.given)} belongs to {values}; the function turns at {turns}"

@@ -9,13 +9,14 @@ from pathlib import Path
 from typing import Any
 
 from fitlib.engine.compute import Account, dataset_figures, dataset_result
-from fitlib.engine.files import read_json, write_json
+from fitlib.engine.files import read_sealed, write_sealed
 from fitlib.engine.planfile import Assignment, read_plan_file
 from fitlib.engine.store import Store
 from fitlib.errors import FitlibError
-from fitlib.plan import Batch, DatasetPlan, Plan, code_identity, digest, numeric_versions, plan_dataset
+from fitlib.plan import Batch, DatasetPlan, Plan, code_identity, numeric_versions, plan_dataset
 
 FORMAT = 1
+_KEYS = {"batch", "members", "failures", "account", "seconds"}
 
 
 def run_batch(plan_file: Path, name: str, output: Path) -> dict[str, Any]:
@@ -49,7 +50,7 @@ def run_batch(plan_file: Path, name: str, output: Path) -> dict[str, Any]:
     begin = time.monotonic()
     content = {**_compute_members(study, task, batch), "seconds": round(time.monotonic() - begin, 3)}
     _require_planned(study, task, batch)  # a file that changed meanwhile may have been read before or after
-    write_json(output, {**content, "sha256": digest(content)})
+    write_sealed(output, content)
     return content
 
 
@@ -110,9 +111,7 @@ def read_batch_output(path: Path, batch: Batch) -> dict[str, Any] | None:
     dict or None
         None when the file is missing, damaged, or the output of another plan.
     """
-    content = read_json(path)
-    if not isinstance(content, dict):
+    content = read_sealed(path)
+    if content is None or content.get("format") != FORMAT or content.get("digest") != batch.digest:
         return None
-    told = content.pop("sha256", None)
-    sound = told == digest(content) and content["format"] == FORMAT and content["digest"] == batch.digest
-    return content if sound else None
+    return content if set(content) >= _KEYS else None

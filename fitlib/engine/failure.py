@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import os
+import re
+from collections.abc import Iterator
 from pathlib import Path
 
 from fitlib.engine.batch import read_batch_output
@@ -14,6 +16,11 @@ from fitlib.plan import Batch, Plan
 
 LAST_LINES = 8
 NAMED = 5
+_OF_NO_USE = re.compile(
+    r"Traceback \(most recent call last\):|Using (workflow specific )?profile|\[?(rerun|Complete log)"
+    r"|During handling of the above|The above exception was|--- Logging error ---|Call stack:|Message: |Arguments: "
+)
+_PLACE = re.compile(r'\s*File "[^"]*", line \d+')
 
 
 def failure(plan: Plan, work: WorkFolder, ended: Ended, events: Events, log: Path) -> FitlibError:
@@ -76,8 +83,21 @@ def last_lines(log: Path, number: int) -> list[str]:
         lines = log.read_text(encoding="utf-8", errors="replace").splitlines()
     except OSError:
         return []
-    told = [line.strip().removeprefix("fitlib: ") for line in lines if line.strip()]
+    told = [line.strip().removeprefix("fitlib: ") for line in _without_code(lines)]
     return told[-number:]
+
+
+def _without_code(lines: list[str]) -> Iterator[str]:
+    """Lines that say something to a person: what stands in the program's code at some place does not."""
+    depth = None
+    for line in filter(str.strip, lines):
+        indent = len(line) - len(line.lstrip())
+        if _PLACE.match(line):
+            depth = indent
+        elif depth is None or indent <= depth:
+            depth = None
+            if not _OF_NO_USE.match(line.strip()):
+                yield line
 
 
 def shown(path: Path) -> str:

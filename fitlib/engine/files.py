@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import os
+import shutil
 import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
@@ -12,8 +13,9 @@ from pathlib import Path
 from typing import Any
 
 from fitlib.errors import FitlibError
-from fitlib.plan import Plan
+from fitlib.plan import Plan, digest
 
+WORK = ".work"
 TEMPORARY = ".new-"
 KEPT_LOGS = 20
 
@@ -31,10 +33,16 @@ def write_atomic(path: Path, content: str | bytes) -> None:
     Raises
     ------
     OSError
-        The disk is full, or the folder cannot be written; the temporary file is removed.
+        The disk is full, or the folder cannot be written; the error names a file, and the temporary one is removed.
     """
+    _clear_the_way(path)
     path.parent.mkdir(parents=True, exist_ok=True)
     data = content.encode("utf-8") if isinstance(content, str) else content
+    with named_errors(path):
+        _write_beside(path, data)
+
+
+def _write_beside(path: Path, data: bytes) -> None:
     descriptor, temporary = tempfile.mkstemp(prefix=TEMPORARY, dir=path.parent)
     try:
         with open(descriptor, "wb") as stream:
@@ -49,6 +57,39 @@ def write_atomic(path: Path, content: str | bytes) -> None:
         raise
 
 
+def _clear_the_way(path: Path) -> None:
+    """Below ``.work`` nothing is anybody's own: a folder in place of the file goes, and a file in place of a folder."""
+    above = list(path.absolute().parents)
+    names = [place.name for place in above]
+    if WORK in names:
+        for place in above[: names.index(WORK)]:
+            remove_file(place)
+        remove_folder(path)
+
+
+def remove_file(path: Path) -> None:
+    """Remove a file that stands where a folder belongs; a folder, or a link to one, is left alone."""
+    if not path.is_dir() and os.path.lexists(path):
+        path.unlink()
+
+
+def remove_folder(path: Path) -> None:
+    """Remove a folder that stands where a file belongs; anything else is left alone."""
+    if path.is_dir() and not path.is_symlink():
+        shutil.rmtree(path)
+
+
+@contextmanager
+def named_errors(path: Path) -> Iterator[None]:
+    """Let errors of the system name a file: a full disk is told without one."""
+    try:
+        yield
+    except OSError as error:
+        if error.filename is None:
+            error.filename = os.fspath(path)
+        raise
+
+
 def write_json(path: Path, content: Any) -> None:
     """Write JSON with sorted keys, whole or not at all."""
     write_atomic(path, json.dumps(content, sort_keys=True, indent=1, allow_nan=False) + "\n")
@@ -58,12 +99,30 @@ def read_json(path: Path) -> Any:
     """Return the content of a JSON file; None when it is missing or damaged."""
     try:
         return json.loads(path.read_bytes())
-    except (OSError, ValueError):
+    except (OSError, ValueError, RecursionError):
+        return None
+
+
+def write_sealed(path: Path, content: dict[str, Any]) -> None:
+    """Write a JSON object together with its digest, whole or not at all."""
+    write_json(path, {**content, "sha256": digest(content)})
+
+
+def read_sealed(path: Path) -> dict[str, Any] | None:
+    """Return what :func:`write_sealed` wrote; None when it is missing or anything in it is not as it was written."""
+    content = read_json(path)
+    if not isinstance(content, dict):
+        return None
+    told = content.pop("sha256", None)
+    try:
+        return content if told == digest(content) else None
+    except (ValueError, RecursionError):  # not a number, or nested too deep for a digest
         return None
 
 
 def remove(path: Path) -> None:
-    """Remove a file; one that is gone already is as good."""
+    """Remove a file, or a folder in its place; one that is gone already is as good."""
+    remove_folder(path)
     with suppress(FileNotFoundError):
         path.unlink()
 
@@ -149,8 +208,10 @@ class WorkFolder:
     def create(self) -> None:
         """Make the folder, with its own ``.gitignore``: nothing of it belongs in version control."""
         ignore = self.root / ".gitignore"
-        if not ignore.exists():
+        if not ignore.is_file():
             write_atomic(ignore, "*\n")
+        for folder in (self.store, self.batches, self.published, self.logs, self.logs / "batches", self.root / "plans"):
+            remove_file(folder)
 
     def of_other_plans(self, plan: Plan) -> list[Path]:
         """Return the files that only other plans have; from the store they are made again in no time."""
@@ -170,7 +231,7 @@ class WorkFolder:
 
 def work_folder(results_dir: Path | str, study_name: str) -> WorkFolder:
     """Return the working folder of a study; nothing is made yet."""
-    return WorkFolder(Path(os.path.abspath(results_dir)) / study_name / ".work")
+    return WorkFolder(Path(os.path.abspath(results_dir)) / study_name / WORK)
 
 
 @contextmanager

@@ -10,19 +10,21 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any, TextIO
 
+from fitlib.engine.altered import WAY_OUT, altered_revision, published_from
 from fitlib.engine.batch import read_batch_output
 from fitlib.engine.compute import Account
 from fitlib.engine.failure import failure, shown
-from fitlib.engine.files import WorkFolder, plain_os_errors, read_json, work_folder
+from fitlib.engine.files import WorkFolder, plain_os_errors, work_folder
 from fitlib.engine.locks import take_lock
 from fitlib.engine.planfile import plan_study, read_latest_plan, write_plan_file
-from fitlib.engine.prepare import forget_results, read_marker, remove_unfinished
+from fitlib.engine.prepare import forget_results, read_marker, read_record, remove_unfinished
 from fitlib.engine.process import Ended, run_child
+from fitlib.engine.profiles import profile_options
 from fitlib.engine.progress import Events, Progress
 from fitlib.engine.store import Store
-from fitlib.engine.summary import DryRun, RunSummary, SummaryRow
+from fitlib.engine.summary import DryRun, RunSummary
 from fitlib.engine.workflow import ANOTHER_RUN, CHANGED, checked_mark, require_sound_data
-from fitlib.errors import FitlibError, InputError, Problem
+from fitlib.errors import FitlibError, InputError, Problem, VerificationError
 from fitlib.plan import BATCHES, Plan, describe_changes, workflow_folder
 
 UNCHANGED = "nothing has changed since: no work, no new revision"
@@ -75,23 +77,27 @@ def run_study(
     Raises
     ------
     InputError
-        The study or its data cannot be used; nothing was done.
+        The study, its data or the profile cannot be used; nothing was done.
+    VerificationError
+        The latest revision should hold these results, but was altered since it was published.
     FitlibError
         Another run is active, a dataset failed (nothing is published then), or a job did.
     """
     with plain_os_errors("the run stopped"):
+        profiles = profile_options(profile)
         request = _plan(path, results_dir, batches)
         if not fresh and (marker := _published(request)):
             return _summary(request, marker, new=False, note=UNCHANGED, warnings=request.study.warnings)
         warnings = (*request.study.warnings, *require_sound_data(request.study))
+        altered = altered_revision(request.work)
         reasons = _make_ready(request, fresh)
         _tell(stream, [f"{request.study.name}: {reason}" for reason in reasons])
         log = request.work.logs / f"run-{datetime.now(UTC).strftime('%Y%m%dT%H%M%S%f')}.log"
         before = _existing_outputs(request)
-        ended, events = _run_workflow(request, cores, profile, log, stream)
+        ended, events = _run_workflow(request, cores, profiles, log, stream)
         if ended.status != 0 or ended.interrupted:
             raise failure(request.plan, request.work, ended, events, log)
-        return _finished(request, before, reasons, warnings, log)
+        return _finished(request, before, log, altered, reasons=reasons, warnings=warnings)
 
 
 def dry_run(path: str | os.PathLike, results_dir: str | os.PathLike = "results", batches: int = BATCHES) -> DryRun:
@@ -121,7 +127,13 @@ def dry_run(path: str | os.PathLike, results_dir: str | os.PathLike = "results",
         if missing:
             steps[dataset.id] = missing
     reasons = tuple(describe_changes(read_latest_plan(request.work), request.plan))
-    return DryRun(request.study.name, False, None, steps, reasons, warnings)
+    altered, blocked = altered_revision(request.work), published_from(request.plan, request.work)
+    if altered:
+        outlook = (
+            f"a run would publish nothing: {WAY_OUT}" if blocked else "a run would publish the new results beside it"
+        )
+        altered = f"{altered}; {outlook}"
+    return DryRun(request.study.name, False, None, steps, reasons, warnings, altered, bool(altered) and blocked)
 
 
 def _plan(path: str | os.PathLike, results_dir: str | os.PathLike, batches: int) -> _Request:
@@ -161,36 +173,26 @@ def _tell(stream: TextIO | None, lines: Sequence[str]) -> None:
 
 
 def _run_workflow(
-    request: _Request, cores: int | None, profile: str | None, log: Path, stream: TextIO | None
+    request: _Request, cores: int | None, profiles: Sequence[str], log: Path, stream: TextIO | None
 ) -> tuple[Ended, Events]:
     progress = Progress({batch.name: len(batch.members) for batch in request.plan.batches}, stream)
     try:
-        ended = run_child(_command(request, cores, profile), request.work.root, log, progress.line)
+        ended = run_child(_command(request, cores, profiles), request.work.root, log, progress.line)
         return ended, progress.events
     finally:
         progress.close()
 
 
-def _command(request: _Request, cores: int | None, profile: str | None) -> list[str]:
+def _command(request: _Request, cores: int | None, profiles: Sequence[str]) -> list[str]:
     """The study goes to Snakemake as a path that it never opens; a URI passes its reading of values unchanged."""
-    workflow = workflow_folder()
-    own_profile = workflow / "profiles" / (profile or "default")
-    is_own = own_profile.is_dir() and (profile is None or os.sep not in profile)
-    options = [] if is_own else ["--profile", _profile(profile or "")]
     return [
-        *(sys.executable, "-P", "-m", "snakemake", "--snakefile", str(workflow / "Snakefile")),
-        *("--workflow-profile", str(own_profile if is_own else workflow / "profiles" / "default")),
-        *options,
+        *(sys.executable, "-P", "-m", "snakemake", "--snakefile", str(workflow_folder() / "Snakefile")),
+        *profiles,
         *("--cores", str(cores or _all_cores()), "--nocolor"),
         *("--config", f"study_file={request.study_file.as_uri()}"),
         *(f"results_dir={request.work.results_dir.as_uri()}", f"batches={request.batches}"),
         f"checked_plan={checked_mark(request.plan)}",
     ]
-
-
-def _profile(profile: str) -> str:
-    """A folder is named from where the user stands, not from where Snakemake runs."""
-    return os.path.abspath(profile) if os.path.isdir(profile) else profile
 
 
 def _all_cores() -> int:
@@ -201,10 +203,13 @@ def _existing_outputs(request: _Request) -> set[str]:
     return {batch.name for batch in request.plan.batches if (request.work.batches / batch.file_name).exists()}
 
 
-def _finished(request: _Request, before: set[str], reasons: tuple[str, ...], warnings: tuple, log: Path) -> RunSummary:
-    marker = read_json(request.work.marker(request.plan.digest))
-    if not isinstance(marker, dict) or marker.get("plan") != request.plan.digest:
+def _finished(request: _Request, before: set[str], log: Path, altered: str, **told) -> RunSummary:
+    """Nobody is handed a revision that was altered; a new one beside it is told of with what is wrong."""
+    marker = read_record(request.plan, request.work)
+    if marker is None:
         raise FitlibError(f"{CHANGED}; details in {shown(log)}")
+    if altered and not marker["new"]:
+        raise VerificationError(f"{altered}; nothing was published: {WAY_OUT}")
     account = _account(request, before)
     return _summary(
         request,
@@ -213,9 +218,11 @@ def _finished(request: _Request, before: set[str], reasons: tuple[str, ...], war
         note=marker["note"],
         computed=account.computed.total(),
         kept=account.kept.total(),
-        reasons=reasons,
-        warnings=warnings,
         log=shown(log),
+        altered=f"{altered}; {marker['revision']} was published all the same: do not use the altered one"
+        if altered
+        else "",
+        **told,
     )
 
 
@@ -236,6 +243,6 @@ def _summary(request: _Request, marker: dict[str, Any], **found) -> RunSummary:
         study=request.study.name,
         revision=marker["revision"],
         path=os.path.join(request.results_dir, request.study.name, marker["revision"]),
-        rows=tuple(SummaryRow(**row) for row in marker["rows"]),
+        rows=marker["rows"],
         **found,
     )

@@ -12,6 +12,7 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
+from fitlib.engine.files import named_errors, remove_folder
 from fitlib.errors import FitlibError
 
 
@@ -65,10 +66,12 @@ def take_lock(path: Path, what: str, wait: bool = False) -> Lock:
         Somebody else holds it: the message names user, host, process and since when.
     """
     path.parent.mkdir(parents=True, exist_ok=True)
+    remove_folder(path)
     descriptor = os.open(path, os.O_RDWR | os.O_CREAT | os.O_CLOEXEC, 0o644)
     try:
         fcntl.flock(descriptor, fcntl.LOCK_EX | (0 if wait else fcntl.LOCK_NB))
-        _write_holder(descriptor)
+        with named_errors(path):
+            _write_holder(descriptor)
     except BlockingIOError:
         os.close(descriptor)
         raise LockedError(f"{what} is active ({_describe(path)}): wait for it, or stop it") from None

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from pathlib import Path
 
-from fitlib.engine.files import WorkFolder, read_json, write_atomic, write_json
+from fitlib.engine.files import WorkFolder, read_json, read_sealed, write_atomic, write_json, write_sealed
 from fitlib.errors import FitlibError
 from fitlib.plan import Plan, make_plan, plan_from_dict, remember_trees
 
@@ -91,8 +91,13 @@ def read_plan_file(path: Path) -> Assignment:
 
 def read_latest_plan(work: WorkFolder) -> Plan | None:
     """Return the plan of the last run that published; None when there is none that can be read."""
-    content = read_json(work.latest_plan)
+    content = read_sealed(work.latest_plan)
     try:
-        return plan_from_dict(content) if isinstance(content, dict) else None
+        return None if content is None else plan_from_dict(content)
     except FitlibError:
         return None
+
+
+def write_latest_plan(plan: Plan, work: WorkFolder) -> None:
+    """Remember the plan of a run that published, for :func:`read_latest_plan`."""
+    write_sealed(work.latest_plan, plan.to_dict())

@@ -8,7 +8,8 @@ from pathlib import Path
 from typing import Any
 
 from fitlib.engine.batch import read_batch_output
-from fitlib.engine.files import WorkFolder, read_json, remove
+from fitlib.engine.files import WorkFolder, read_sealed, remove, remove_folder
+from fitlib.engine.summary import SummaryRow
 from fitlib.errors import FitlibError
 from fitlib.plan import Plan
 
@@ -26,10 +27,31 @@ def read_marker(plan: Plan, work: WorkFolder) -> dict[str, Any] | None:
     dict or None
         None too when the latest revision is another one, or is not what its manifest says.
     """
-    content = read_json(work.marker(plan.digest))
-    if not isinstance(content, dict) or content.get("plan") != plan.digest:
+    content = read_record(plan, work)
+    return content if content and content["revision"] == intact_revision(work) else None
+
+
+def read_record(plan: Plan, work: WorkFolder) -> dict[str, Any] | None:
+    """Return what the publishing job recorded, whatever became of the revision since.
+
+    Parameters
+    ----------
+    plan : Plan
+    work : WorkFolder
+
+    Returns
+    -------
+    dict or None
+        Its rows are made :class:`SummaryRow`. None when the record is missing, damaged, or that of another plan.
+    """
+    content = read_sealed(work.marker(plan.digest))
+    if content is None or content.get("plan") != plan.digest or not content.keys() >= {"revision", "new", "note"}:
         return None
-    return content if content.get("revision") == intact_revision(work) else None
+    try:
+        rows = tuple(SummaryRow(**row) for row in content["rows"])
+    except (KeyError, TypeError):
+        return None
+    return {**content, "rows": rows} if [row.dataset for row in rows] == [each.id for each in plan.datasets] else None
 
 
 def intact_revision(work: WorkFolder) -> str | None:
@@ -61,6 +83,8 @@ def remove_unfinished(plan: Plan, work: WorkFolder) -> None:
         output = read_batch_output(path, batch)
         if output is None or output["failures"]:
             remove(path)
+        remove_folder(work.batch_log(batch.file_name))
+    remove_folder(work.publish_log(plan.digest))
     for path in list(work.leftovers()):
         remove(path)
 

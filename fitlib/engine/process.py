@@ -14,6 +14,7 @@ from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from pathlib import Path
 
+from fitlib.engine.files import named_errors
 from fitlib.errors import FitlibError
 from fitlib.plan import PACKAGE
 
@@ -90,15 +91,31 @@ def run_child(command: Sequence[str], folder: Path, log: Path, on_line: Callable
     """
     share_package()
     log.parent.mkdir(parents=True, exist_ok=True)
-    with open(log, "a", encoding="utf-8", errors="backslashreplace") as record:
+    with _kept(log) as keep:
         child = _start(command, folder, {**os.environ, **ONE_THREAD, PARENT: str(os.getpid())})
         with _forwarded_signals(child) as received:
             threading.Thread(target=_end_orphans, args=(child,), daemon=True).start()
             for line in child.stdout:
-                record.write(line)
+                keep(line)
                 on_line(line)
             status = child.wait()
     return Ended(status, bool(received))
+
+
+@contextmanager
+def _kept(log: Path) -> Iterator[Callable[[str], None]]:
+    """A function that adds a line to the log; its errors name the log, other errors do not."""
+    record = open(log, "a", encoding="utf-8", errors="backslashreplace")  # noqa: SIM115 (closed below)
+
+    def keep(line: str) -> None:
+        with named_errors(log):
+            record.write(line)
+
+    try:
+        yield keep
+    finally:
+        with named_errors(log):
+            record.close()
 
 
 def _start(command: Sequence[str], folder: Path, environment: Mapping[str, str]) -> subprocess.Popen:

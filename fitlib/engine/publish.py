@@ -9,9 +9,9 @@ from typing import Any
 
 from fitlib.engine.batch import read_batch_output
 from fitlib.engine.compute import Account, dataset_figures, dataset_result
-from fitlib.engine.files import WorkFolder, remove, write_json
+from fitlib.engine.files import WorkFolder, remove, write_sealed
 from fitlib.engine.locks import take_lock
-from fitlib.engine.planfile import Assignment, plan_study, read_plan_file
+from fitlib.engine.planfile import Assignment, plan_study, read_plan_file, write_latest_plan
 from fitlib.engine.runfacts import run_facts
 from fitlib.engine.store import Store
 from fitlib.engine.summary import SummaryRow
@@ -182,5 +182,5 @@ def _record(task: Assignment, marker: Path, content: dict[str, Any]) -> None:
     """The marker last: without it the plan counts as not published, and publishing again does no harm."""
     for path in task.work.of_other_plans(task.plan):
         remove(path)
-    write_json(task.work.latest_plan, task.plan.to_dict())
-    write_json(marker, content)
+    write_latest_plan(task.plan, task.work)
+    write_sealed(marker, content)

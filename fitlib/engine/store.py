@@ -40,7 +40,7 @@ class Store:
         try:
             entry = json.loads(self.path(key).read_bytes())
             sound = entry["key"] == key and entry["sha256"] == _sum(key, entry["value"])
-        except (OSError, ValueError, KeyError, TypeError):
+        except (OSError, ValueError, KeyError, TypeError, RecursionError):
             return None
         return entry["value"] if sound else None
 

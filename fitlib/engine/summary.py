@@ -28,6 +28,12 @@ class SummaryRow:
     runner_up : str or None
     margin : float or None
         Of the runner-up's loss over the chosen one's, relative to the latter.
+    warnings : int
+        How many warnings stand on the first page of the dataset.
+    target_met : bool or None
+        Whether the target of the study is met; None without a target, or where nothing was judged.
+    reason : str
+        Why the verdict is what it is.
     """
 
     dataset: str
@@ -38,13 +44,18 @@ class SummaryRow:
     outer_loss: float | None
     runner_up: str | None
     margin: float | None
+    warnings: int = 0
+    target_met: bool | None = None
+    reason: str = ""
 
     @classmethod
     def of(cls, result: Mapping[str, Any]) -> SummaryRow:
         """Return the row of a dataset's result."""
         chosen = result["selection"]
         names = ("candidate", "verdict", "choice", "loss", "outer_loss", "runner_up", "margin")
-        return cls(result["dataset"], *(chosen.get(name) for name in names))
+        found = (chosen.get(name) for name in names)
+        told = (len(result["warnings"]), chosen.get("target_met"), chosen.get("verdict_reason") or "")
+        return cls(result["dataset"], *found, *told)
 
     def to_dict(self) -> dict[str, Any]:
         """Return the row as JSON has it."""
@@ -76,6 +87,8 @@ class RunSummary:
         Of the check.
     log : str
         The file with everything that was said; empty when the workflow was not started.
+    altered : str
+        What is wrong with the revision before the new one; empty when it is as it was published.
     """
 
     study: str
@@ -89,6 +102,7 @@ class RunSummary:
     reasons: tuple[str, ...] = ()
     warnings: tuple[Problem, ...] = ()
     log: str = ""
+    altered: str = ""
 
     @property
     def not_adequate(self) -> tuple[str, ...]:
@@ -111,6 +125,10 @@ class DryRun:
         The steps that would be computed, by dataset; datasets with nothing to compute are left out.
     reasons : tuple of str
     warnings : tuple of Problem
+    altered : str
+        What is wrong with the latest revision, and what a run makes of it; empty when it is as it was published.
+    blocked : bool
+        It is altered and nothing else has changed, so that a run would publish nothing.
     """
 
     study: str
@@ -119,3 +137,5 @@ class DryRun:
     steps: Mapping[str, tuple[str, ...]]
     reasons: tuple[str, ...] = ()
     warnings: tuple[Problem, ...] = ()
+    altered: str = ""
+    blocked: bool = False

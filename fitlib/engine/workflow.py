@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, NoReturn
-from urllib.parse import unquote, urlsplit
+from urllib.parse import unquote_to_bytes, urlsplit
 
-from fitlib.engine.files import WorkFolder, read_json, work_folder
+from fitlib.engine.files import WorkFolder, work_folder
 from fitlib.engine.locks import Lock, LockedError, take_lock
 from fitlib.engine.planfile import plan_study, write_plan_file
-from fitlib.engine.prepare import forget_results, remove_unfinished
+from fitlib.engine.prepare import forget_results, read_record, remove_unfinished
 from fitlib.engine.process import follow_parent, share_package
 from fitlib.errors import FitlibError, InputError, Problem
 from fitlib.plan import BATCHES, Plan
@@ -64,7 +65,7 @@ class WorkflowRun:
 
     def tell(self) -> None:
         """Say where the results are."""
-        content = read_json(self.work.marker(self.plan.digest)) or {}
+        content = read_record(self.plan, self.work) or {}
         print(f"fitlib: {content.get('note', 'nothing was published')}", file=sys.stderr, flush=True)
 
     def start(self) -> None:
@@ -188,7 +189,7 @@ def _path(value: Any) -> str:
     """A path, or a ``file:`` URI: Snakemake reads numbers and YAML into other texts, a URI passes unchanged."""
     if not isinstance(value, str):
         raise FitlibError(f"{value!r} is not a path: write it as a file: URI, or use: fitlib run STUDY")
-    return unquote(urlsplit(value).path) if value.startswith("file:///") else value
+    return os.fsdecode(unquote_to_bytes(urlsplit(value).path)) if value.startswith("file:///") else value
 
 
 def _batches(config: Mapping[str, Any]) -> int:

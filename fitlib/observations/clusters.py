@@ -1,7 +1,7 @@
 """Do stimulus values gather in groups without repeating? The rule behind the question for a level tolerance.
 
 Held-out losses are only honest when all observations of one level are held out together. Where each visit to a level
-has its own stimulus value (setting scatter), exact equality would make every visit a level of its own. Two signs:
+has its own stimulus value (setting scatter), exact equality would make every visit a level of its own. Three signs:
 
 1. Groups. The sorted gaps between distinct values fall into many small and some large ones. Were the values placed at
    random, the gaps would be exponential, and the chance that among n gaps the k smallest all stay below 1/r of the
@@ -12,6 +12,7 @@ has its own stimulus value (setting scatter), exact equality would make every vi
    by every series, from being taken for scatter. The rule is applied on the stimulus and, for scatter that grows with
    it, on its logarithm.
 2. Few repeats. In two or more series over the same interval, less than half of the values that could have repeated do.
+3. Strays. Most values repeat, and a few that hardly do lie close beside them (`strays`).
 """
 
 from __future__ import annotations
@@ -20,6 +21,8 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+
+from fitlib.observations.strays import find_strays
 
 LEAST_CHANCE = 1e-3
 LEAST_RATIO = 2.0
@@ -34,7 +37,7 @@ class Clusters:
 
     Attributes
     ----------
-    sign : {"groups", "few repeats"}
+    sign : {"groups", "few repeats", "strays"}
     distinct : int
         Distinct stimulus values.
     closest : float
@@ -45,6 +48,8 @@ class Clusters:
         Width of the widest group and smallest gap between groups, in the unit of the stimulus.
     tolerance : float or None
         Proposed level tolerance; None when no single one keeps the groups apart.
+    strays : tuple of int
+        Places of the observations that lie beside a level; empty for the other signs.
     """
 
     sign: str
@@ -54,6 +59,7 @@ class Clusters:
     width: float | None = None
     gap: float | None = None
     tolerance: float | None = None
+    strays: tuple[int, ...] = ()
 
 
 def log_chance(gaps: int, small: int, ratio: float) -> float:
@@ -207,11 +213,11 @@ def _closest(values: np.ndarray) -> float:
     return float(np.min(np.diff(values)))
 
 
-def _described(sign: str, values: np.ndarray, group: np.ndarray) -> Clusters:
+def _described(sign: str, values: np.ndarray, group: np.ndarray, strays: tuple[int, ...] = ()) -> Clusters:
     firsts, lasts = _edges(group)
     width = float(np.max(values[lasts] - values[firsts]))
     gap = float(np.min(values[firsts[1:]] - values[lasts[:-1]]))
-    return Clusters(sign, values.size, _closest(values), firsts.size, width, gap, _between(width, gap))
+    return Clusters(sign, values.size, _closest(values), firsts.size, width, gap, _between(width, gap), strays)
 
 
 def _few_repeats(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> bool:
@@ -240,7 +246,7 @@ def _by_rank(values: np.ndarray, label: np.ndarray, series: np.ndarray) -> np.nd
 
 
 def find_clusters(stimulus: np.ndarray, series: np.ndarray) -> Clusters | None:
-    """Look for stimulus values that gather in groups, or hardly repeat over series.
+    """Look for stimulus values that gather in groups, hardly repeat over series, or stray from levels.
 
     Parameters
     ----------
@@ -265,4 +271,5 @@ def find_clusters(stimulus: np.ndarray, series: np.ndarray) -> Clusters | None:
         if group is None:
             return Clusters("few repeats", values.size, _closest(values))
         return _described("few repeats", values, group)
-    return None
+    strays = find_strays(values, label, series)
+    return None if strays is None else _described("strays", values, strays.group, strays.places)

@@ -44,21 +44,28 @@ def missing_column(name: str, known: tuple[str, ...]) -> str:
     """Plain words for a column that a file does not have."""
     near = nearest_name(name, known)
     guess = f'did you mean "{near}"? ' if near else ""
-    listed = ", ".join(quoted(other) for other in known[:20] if other)
-    rest = f" and {len(known) - 20} more" if len(known) > 20 else ""
-    return f"there is no column {quoted(name)}; {guess}the file has {listed}{rest}"
+    return f"there is no column {quoted(name)}; {guess}the file has {_names(known)}"
 
 
-def has_columns(table: Table, columns, faults: Faults) -> bool:
-    """Whether the table has every declared column; each missing one is a fault."""
+def _names(known: tuple[str, ...]) -> str:
+    shown = ", ".join(quoted(other) for other in known[:20] if other)
+    return shown + (f" and {len(known) - 20} more" if len(known) > 20 else "")
+
+
+def missing_columns(table: Table, columns) -> dict[str, str]:
+    """What to say of each declared column that the table does not have, by its part."""
     wanted = {role: getattr(columns, role) for role in ROLES if getattr(columns, role) is not None}
-    missing = {role: name for role, name in wanted.items() if name not in table.header}
-    for role, name in missing.items():
-        hint = ""
-        if len(table.header) == 1 and any(mark in table.header[0] for mark in ",;\t"):
-            hint = f" (read as one column with delimiter {table.delimiter}; declare the delimiter)"
-        faults.add("missing column", 1, f"columns.{role}: {missing_column(name, table.header)}{hint}")
-    return not missing
+    return {role: _missing(name, table) for role, name in wanted.items() if name not in table.header}
+
+
+def _missing(name: str, table: Table) -> str:
+    near = nearest_name(name, table.header)
+    message = f"column {quoted(name)} is not in {table.file}; its columns are {_names(table.header)}"
+    if near:
+        message += f"; did you mean {quoted(near)}?"
+    if len(table.header) == 1 and any(mark in table.header[0] for mark in ",;\t"):
+        message += f" (read as one column with delimiter {table.delimiter}; declare the delimiter)"
+    return message
 
 
 def _numbers(rows: FileRows, name: str, decimal: str) -> np.ndarray:

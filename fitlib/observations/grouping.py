@@ -19,6 +19,7 @@ from fitlib.observations.levels import (
 from fitlib.observations.wording import listed, number, plural
 
 Blame = Callable[[str, str], None]
+SHOWN_STRAYS = 20
 
 
 @dataclass(frozen=True)
@@ -29,7 +30,7 @@ class Rows:
     ----------
     file : sequence of str
     line : ndarray of int, shape (n_rows,)
-    stimulus : ndarray of float, shape (n_rows,)
+    stimulus, response : ndarray of float, shape (n_rows,)
     label : ndarray of float, shape (n_rows,), or None
         The `level` column.
     series : sequence of str
@@ -39,6 +40,7 @@ class Rows:
     file: Sequence[str]
     line: np.ndarray
     stimulus: np.ndarray
+    response: np.ndarray
     label: np.ndarray | None
     series: Sequence[str]
     state: Sequence[str]
@@ -71,9 +73,24 @@ def _ways_out(found: Clusters) -> str:
     return f"give `level_tolerance: {found.tolerance:g}` (or a `level` column), or {apart}"
 
 
-def advice(found: Clusters) -> str:
+def _stray_rows(found: Clusters, rows: Rows) -> str:
+    named = [f"{rows.file[at]} row {rows.line[at]} ({number(rows.stimulus[at])})" for at in rows.used[[*found.strays]]]
+    return listed(named, SHOWN_STRAYS)
+
+
+def _exchanged(rows: Rows) -> bool:
+    """Whether it is the response that repeats, as set values do, and not the stimulus."""
+    used = rows.used
+    stimulus, response = (np.unique(part[used]).size for part in (rows.stimulus, rows.response))
+    return 2 * response <= used.size and 2 * response <= stimulus
+
+
+def advice(found: Clusters, rows: Rows) -> str:
     """What was found among the stimulus values, and what the user may declare."""
     seen = f"{found.distinct} distinct stimulus values"
+    if found.sign == "strays":
+        what = f"{_stray_rows(found, rows)}: set beside a level that is met more often, and would be a level of its own"
+        return f"{what}; observations of one level must be held out together: {_ways_out(found)}"
     if found.sign == "groups":
         what = (
             f"{seen} gather in {found.groups} groups without repeating (widest group {number(found.width)}, smallest "
@@ -83,7 +100,8 @@ def advice(found: Clusters) -> str:
         what = f"{seen}, of which few repeat over the series"
         if found.groups is not None:
             what += f"; rank by rank they form {found.groups} groups"
-    return f"{what}; observations of one level must be held out together: {_ways_out(found)}"
+    hint = "are stimulus and response exchanged? The response repeats, the stimulus does not; else " * _exchanged(rows)
+    return f"{what}; observations of one level must be held out together: {hint}{_ways_out(found)}"
 
 
 def _declared(rows: Rows, tolerance: float | None) -> Levels:
@@ -123,6 +141,11 @@ def _still_clustered(rows: Rows, levels: Levels) -> list[str]:
     """A tolerance that is too small would split levels in silence."""
     centres = levels.values[levels.index]
     found = find_clusters(centres, series_numbers([rows.series[at] for at in rows.used]))
+    if found is not None and found.sign == "strays":
+        named = _stray_rows(found, rows)
+        return [
+            f"{named}: with this level_tolerance still beside a level, as one of its own; is the tolerance too small?"
+        ]
     if found is None or found.sign != "groups":
         return []
     return [
@@ -173,7 +196,7 @@ def group_used(rows: Rows, dataset, settled: bool, blame: Blame) -> Grouped:
     elif tolerance is None:
         found = find_clusters(rows.stimulus[used], series_numbers([rows.series[at] for at in used]))
         if found is not None:
-            blame("level_tolerance", advice(found))
+            blame("level_tolerance", advice(found, rows))
     elif tolerance > 0 and not levels.faults:
         notes += _still_clustered(rows, levels)
     if settled and levels.values.size == 1:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import PurePosixPath
 from typing import TYPE_CHECKING
 
@@ -13,13 +13,14 @@ import numpy as np
 from fitlib.errors import InputError, Problem
 from fitlib.observations import sources
 from fitlib.observations.claims import Place, match
-from fitlib.observations.columns import FileRows, has_columns, read_roles
+from fitlib.observations.columns import FileRows, missing_columns, read_roles
+from fitlib.observations.design import design_advice
 from fitlib.observations.faults import Faults
 from fitlib.observations.grouping import Grouped, Rows, group_used
 from fitlib.observations.notes import blank_line_notes, repeated_row_notes, shared_series_notes
 from fitlib.observations.records import FileAccount, Observations
 from fitlib.observations.tables import Table, read_table
-from fitlib.observations.wording import number, plural, quoted
+from fitlib.observations.wording import listed, number, plural, quoted
 
 if TYPE_CHECKING:  # for the reader of the code; pydantic need not be loaded to read a CSV file
     from fitlib.study import DatasetSettings, Study
@@ -46,6 +47,13 @@ class _Reading:
         line = self.study.line_of(full)
         text = f"dataset {quoted(self.dataset.id)}: {message}"
         self.problems.append(Problem(self.study.path, text, line=line, key=full))
+
+
+def _blame_column(reading: _Reading, role: str, message: str) -> None:
+    """A column that a file lacks is blamed on the key that names it, where that stands."""
+    own, default = f"{reading.dataset.key}.columns.{role}", f"dataset_defaults.columns.{role}"
+    key = default if own not in reading.study.lines and default in reading.study.lines else own
+    reading.problems.append(Problem(reading.study.path, message, line=reading.study.line_of(key), key=key))
 
 
 def _too_large(reading: _Reading) -> bool:
@@ -98,7 +106,10 @@ def _read_files(reading: _Reading) -> None:
         table = read_table(texts.pop(file), file, settings.delimiter, settings.decimal, faults)
         if table is None:
             continue
-        if has_columns(table, settings.columns, faults) and not len(faults):
+        missing = missing_columns(table, settings.columns)
+        for role, message in missing.items():
+            _blame_column(reading, role, message)
+        if not missing and not len(faults):
             reading.files.append(read_roles(table, settings.columns, settings.decimal, faults))
             continue
         for place, (kind, message) in table.uneven.items():
@@ -174,6 +185,7 @@ def _rows(reading: _Reading, states: list[str]) -> Rows:
         file=[rows.table.file for rows in files for _ in rows.table.rows],
         line=np.array([line for rows in files for line in rows.table.lines], dtype=int),
         stimulus=_joined(files, "stimulus"),
+        response=_joined(files, "response"),
         label=None if files[0].level is None else _joined(files, "level"),
         series=[word for rows in files for word in rows.series],
         state=states,
@@ -259,6 +271,7 @@ def read_observations(study: Study, dataset: DatasetSettings) -> Observations:
         grouped = group_used(rows, dataset, settled, reading.blame)
         account = _account(reading, states)
         built = _build(reading, rows, grouped, excluded, account)
+        built = replace(built, advice=design_advice(study, dataset, built, reading.files))
         told = _account_problems(reading, account)
     problems = [problem for faults in reading.faults for problem in faults.problems()]
     if problems or reading.problems:
@@ -276,7 +289,8 @@ def check_observations(study: Study) -> tuple[list[Problem], list[Observations]]
     Returns
     -------
     problems : list of fitlib.errors.Problem
-        Of all datasets, in the order of the study.
+        Of all datasets, in the order of the study; where there are none, warnings of what a person may want to change
+        before a run.
     observations : list of Observations
         Of the datasets without problem; `Observations.dataset` says which.
     """
@@ -287,4 +301,19 @@ def check_observations(study: Study) -> tuple[list[Problem], list[Observations]]
             readable.append(read_observations(study, dataset))
         except InputError as error:
             problems.extend(error.problems)
-    return problems, readable
+    return problems or _advice(study, readable), readable
+
+
+def _advice(study: Study, observations: Sequence[Observations]) -> list[Problem]:
+    """The advice on all datasets; the same advice on many of them is one warning."""
+    groups: dict[tuple[str, str], list[DatasetSettings]] = {}
+    for dataset, record in zip(study.datasets, observations, strict=True):
+        for advice in record.advice:
+            groups.setdefault(advice, []).append(dataset)
+    warnings = []
+    for (key, message), datasets in groups.items():
+        full = key if key == "families" else f"{datasets[0].key}.{key}".rstrip(".")
+        named = listed([quoted(dataset.id) for dataset in datasets], 5)
+        text = f"dataset{'s' * (len(datasets) > 1)} {named}: {message}"
+        warnings.append(Problem(study.path, text, line=study.line_of(full), key=full, severity="warning"))
+    return warnings

@@ -67,6 +67,8 @@ class Observations:
         0 to L - 1, ascending by level; -1 for a row that is not used.
     dataset : str
         The id of the dataset.
+    advice : tuple of (str, str)
+        What a person may want to change before a run: key below the dataset (``families`` is the study's own), message.
     """
 
     file: tuple[str, ...]
@@ -82,3 +84,4 @@ class Observations:
     notes: tuple[str, ...]
     level_index: np.ndarray
     dataset: str = ""
+    advice: tuple[tuple[str, str], ...] = ()

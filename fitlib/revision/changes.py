@@ -40,7 +40,9 @@ class History:
         if not self.previous:
             notes.append("First revision." if not self.missing else "No earlier revision is left to compare with.")
         elif self.comparison is None:
-            notes.append(f"Could not be compared with {self.previous}: it is not as it was published.")
+            notes.append(
+                f"Could not be compared with {self.previous}: it is not as it was published, or not readable here."
+            )
         else:
             notes.append(f"Compared with {self.previous}.")
         return notes

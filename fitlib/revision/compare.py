@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from pathlib import Path
 
+from fitlib.errors import VerificationError
 from fitlib.revision.comparison import Choice, Comparison, DatasetChange, FactChange, same_number
 from fitlib.revision.curves import Shift, largest_shift
 from fitlib.revision.data import data_changes, study_text_differs
 from fitlib.revision.manifest import FACTS_APART
-from fitlib.revision.read import Revision, read_revision
+from fitlib.revision.read import NOT_READ_HERE, UNREADABLE, Revision, read_revision
 from fitlib.revision.settings import settings_changes
 
 _RTOL = 1e-8
@@ -33,10 +35,27 @@ def compare_revisions(before: Revision | str | Path, after: Revision | str | Pat
     InputError
         If there is no such folder.
     VerificationError
-        If a file that is read was altered since it was published.
+        If a file that is read was altered since it was published, or is none that this program reads.
     """
     old, new = _opened(before), _opened(after)
-    choices = _choices(old), _choices(new)
+    choices = tuple(map(_choices, (old, new)))
+    with _readable(old, new):
+        comparison = _compare(old, new, choices)
+        comparison.lines()  # what cannot be told was not read rightly
+    return comparison
+
+
+@contextmanager
+def _readable(*revisions: Revision) -> Iterator[None]:
+    """A file may have the digest that the manifest gives and still hold what nobody foresaw."""
+    try:
+        yield
+    except UNREADABLE as error:
+        places = " or ".join(str(revision.path) for revision in revisions)
+        raise VerificationError(f"{places}: {NOT_READ_HERE} ({type(error).__name__})") from None
+
+
+def _compare(old: Revision, new: Revision, choices: tuple[Mapping[str, Choice], ...]) -> Comparison:
     datasets = tuple(_dataset_changes(old, new, *choices))
     both = set(choices[0]).intersection(choices[1])
     return Comparison(
@@ -73,9 +92,11 @@ def _other_facts(revision: Revision) -> dict[str, object]:
 
 
 def _choices(revision: Revision) -> dict[str, Choice]:
-    facts = {row["dataset"]: row for row in revision.rows("datasets")}
-    rows = {row["dataset"]: row for row in revision.rows("chosen")}
-    return {name: _choice(row, facts.get(name, {}), revision.functions.get(name, {})) for name, row in rows.items()}
+    functions = revision.functions
+    with _readable(revision):
+        facts = {row["dataset"]: row for row in revision.rows("datasets")}
+        rows = {row["dataset"]: row for row in revision.rows("chosen")}
+        return {name: _choice(row, facts.get(name, {}), functions.get(name, {})) for name, row in rows.items()}
 
 
 def _choice(row: Mapping[str, str], facts: Mapping[str, str], function: Mapping) -> Choice:

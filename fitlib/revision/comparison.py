@@ -15,7 +15,10 @@ from fitlib.revision.settings import SettingChange
 _LONGEST_VALUE = 300
 _LONGEST_LIST = 10
 _RTOL = 1e-8
-_DEVIATIONS = {"repeatability": "reading_standard_deviation", "level deviation": "level_standard_deviation"}
+_DEVIATIONS = {
+    "standard deviation of a reading": "reading_standard_deviation",
+    "standard deviation that averaging does not divide": "level_standard_deviation",
+}
 
 
 @dataclass(frozen=True)
@@ -42,7 +45,8 @@ class Choice:
     interval : tuple of float, or None
         Measuring interval.
     reading_standard_deviation, level_standard_deviation : float or None
-        Of the issued function, in the unit of the fitted quantity.
+        Of the issued function, in the unit of the fitted quantity: of a reading, and what averaging readings does not
+        divide.
     unit, stimulus_unit : str
         Of the fitted quantity and of the stimulus.
     use : str
@@ -239,11 +243,8 @@ def _differences(change: DatasetChange) -> Iterator[str]:
     yield from _loss_difference(old, new)
     if old.interval != new.interval:
         yield f"measuring interval from {_interval(old)} to {_interval(new)}"
-    for label, name in (
-        ("repeatability", "reading_standard_deviation"),
-        ("level deviation", "level_standard_deviation"),
-    ):
-        yield from _number_difference(f"standard deviation of {label}", getattr(old, name), getattr(new, name), unit)
+    for label, name in _DEVIATIONS.items():
+        yield from _number_difference(label, getattr(old, name), getattr(new, name), unit)
     if change.shift is not None and change.shift.amount > 0:
         yield _shift_text(change.shift)
 

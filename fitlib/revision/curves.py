@@ -61,13 +61,14 @@ def _shift(before: dict, after: dict, interval: tuple[float, float], unit: str, 
 
     grid = np.linspace(*interval, _POINTS)
     old, new = restore(before["scaled"]), restore(after["scaled"])
-    values = old.evaluate(grid), new.evaluate(grid)
-    distance = np.abs(values[1] - values[0])
-    place = int(np.argmax(distance))
     evaluated = None
-    if after["function"] == "calibration" and after["evaluation"] == "inverse":
-        slope = np.abs(new.slope(grid))
-        evaluated = float(np.max(distance / slope)) if np.all(slope > 0) else None
+    with np.errstate(all="ignore"):  # numbers of another program may leave the range of doubles
+        values = old.evaluate(grid), new.evaluate(grid)
+        distance = np.abs(values[1] - values[0])
+        if after["function"] == "calibration" and after["evaluation"] == "inverse":
+            slope = np.abs(new.slope(grid))
+            evaluated = float(np.max(distance / slope)) if np.all(slope > 0) else None
+    place = int(np.argmax(distance))
     scale = float(np.max(np.abs(values)))
     return Shift(float(distance[place]), float(grid[place]), evaluated, scale, unit, at_unit, at_unit)
 

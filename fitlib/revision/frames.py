@@ -29,10 +29,17 @@ def rows_of(data: bytes, types: Mapping[str, str]) -> Iterator[dict[str, str]]:
     Yields
     ------
     dict of str to str
+
+    Raises
+    ------
+    ValueError
+        If it is not UTF-8, or a row has more or fewer cells than the header.
     """
     reader = csv.DictReader(io.StringIO(data.decode("utf-8"), newline=""), strict=True)
     text = [name for name in reader.fieldnames or [] if types.get(name, "text") == "text"]
     for row in reader:
+        if None in row or None in row.values():
+            raise ValueError("a row has not as many cells as the header")
         row.update((name, unguarded(row[name])) for name in text)
         yield row
 

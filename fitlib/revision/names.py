@@ -9,6 +9,7 @@ from pathlib import Path
 from fitlib.errors import FitlibError
 
 _REVISION = re.compile(r"rev-(\d{4,9})")
+LAST_NUMBER = 999_999_999
 _STUDY = re.compile(r"[a-z0-9][a-z0-9-]{0,59}")
 # Marks that reorder or hide the text around them.
 _INVISIBLE = frozenset("\u200b\u200e\u200f\u202a\u202b\u202c\u202d\u202e\u2060\u2066\u2067\u2068\u2069\ufeff")

@@ -14,7 +14,7 @@ from fitlib.errors import FitlibError
 from fitlib.revision.changes import History, changes_text
 from fitlib.revision.compare import compare_revisions
 from fitlib.revision.disk import copy_new, digest_of, dump_json, sha256, sync_folder, sync_folders, write_new
-from fitlib.revision.ledger import numbers_in, read_ledger, write_ledger
+from fitlib.revision.ledger import differs_from_ledger, next_number, numbers_in, read_ledger, write_ledger
 from fitlib.revision.manifest import (
     HISTORY_FILES,
     MANIFEST,
@@ -139,10 +139,15 @@ def next_revision(results_dir: str | Path, study_name: str) -> str:
     Returns
     -------
     str
+
+    Raises
+    ------
+    FitlibError
+        If the name of the study cannot name a folder, or no number is left.
     """
     folder = study_folder(results_dir, study_name)
     taken = numbers_in(folder) | set(read_ledger(folder)) if folder.is_dir() else set()
-    return revision_name(max(taken, default=0) + 1)
+    return revision_name(next_number(folder, taken))
 
 
 def _check_paths(files: Mapping, inputs: Mapping) -> None:
@@ -244,7 +249,7 @@ class _Staged:
         folder = self.path.parent
         ledger = read_ledger(folder)
         present = numbers_in(folder)
-        number = max(present | set(ledger), default=0) + 1
+        number = next_number(folder, present | set(ledger))
         name = revision_name(number)
         missing = [revision_name(item) for item in sorted(set(ledger) - present)]
         history = self._history(manifest, name, latest, missing)
@@ -260,9 +265,9 @@ class _Staged:
         if not isinstance(latest, Revision):
             return History(latest or "", None, tuple(missing))
         staged = Revision(self.path, name, self.study, with_history(manifest, name, None, {}))
-        try:
-            comparison = compare_revisions(latest, staged)
-        except (FitlibError, KeyError, ValueError):  # altered, or written by another program
+        try:  # a manifest that was rewritten is no base, nor are files that were altered or written by another program
+            comparison = None if differs_from_ledger(latest.path) else compare_revisions(latest, staged)
+        except FitlibError:
             comparison = None
         return History(latest.path.name, comparison, tuple(missing))
 
@@ -294,7 +299,8 @@ def _of_inputs_and_program(manifest: Mapping) -> dict:
     """What must be the same when only libraries differ."""
     apart = ("versions", "plan_digest", "content_digest", "outputs", "history")
     rest = {name: value for name, value in manifest.items() if name not in apart}
-    return rest | {"fitlib": (manifest.get("versions") or {}).get("fitlib")}
+    versions = manifest.get("versions")
+    return rest | {"fitlib": versions.get("fitlib") if isinstance(versions, dict) else versions}
 
 
 def _previous(latest: Revision | str | None) -> dict | None:

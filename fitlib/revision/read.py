@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import csv
 import os
 from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property
 from pathlib import Path
@@ -17,6 +19,10 @@ from fitlib.revision.names import printable, revision_number, study_folder
 
 if TYPE_CHECKING:
     import pandas
+
+NOT_READ_HERE = "holds what this program does not read"
+#: What content of another form than this program writes can raise.
+UNREADABLE = (ValueError, KeyError, TypeError, AttributeError, IndexError, ArithmeticError, RecursionError, csv.Error)
 
 
 @dataclass(frozen=True)
@@ -90,6 +96,14 @@ class Revision:
             raise OSError("a link stands on the way")
         return place
 
+    @contextmanager
+    def _reading(self, path: str) -> Iterator[None]:
+        """A file may have the digest that the manifest gives and still hold what nobody foresaw."""
+        try:
+            yield
+        except UNREADABLE:
+            raise VerificationError(f"{self.path}/{printable(path)}: {NOT_READ_HERE}") from None
+
     def read_json(self, path: str) -> object:
         """What a JSON file of the revision holds; raises like ``read_bytes``."""
         data = self.read_bytes(path)
@@ -101,7 +115,13 @@ class Revision:
     @cached_property
     def resolved(self) -> dict:
         """The study with every default spelled out."""
-        return self.read_json("resolved.json")
+        return self._object("resolved.json")
+
+    def _object(self, path: str) -> dict:
+        content = self.read_json(path)
+        if not isinstance(content, dict):
+            raise VerificationError(f"{self.path}/{printable(path)}: {NOT_READ_HERE}")
+        return content
 
     @cached_property
     def table_names(self) -> tuple[str, ...]:
@@ -121,7 +141,14 @@ class Revision:
         -------
         iterator of dict
         """
-        return rows_of(self.read_bytes(f"tables/{name}.csv"), self._types(name))
+        path = f"tables/{name}.csv"
+        data, types = self.read_bytes(path), self._types(name)
+
+        def guarded() -> Iterator[dict[str, str]]:
+            with self._reading(path):
+                yield from rows_of(data, types)
+
+        return guarded()
 
     def table(self, name: str) -> pandas.DataFrame:
         """A table as a pandas frame, with the types that ``columns.csv`` gives.
@@ -141,7 +168,10 @@ class Revision:
         VerificationError
             If there is no such table, or it was altered.
         """
-        return frame_of(self.read_bytes(f"tables/{name}.csv"), self._types(name))
+        path = f"tables/{name}.csv"
+        data, types = self.read_bytes(path), self._types(name)
+        with self._reading(path):
+            return frame_of(data, types)
 
     def _types(self, name: str) -> dict[str, str]:
         return self._column_types.get(f"{name}.csv", {})
@@ -149,8 +179,11 @@ class Revision:
     @cached_property
     def _column_types(self) -> dict[str, dict[str, str]]:
         types: dict[str, dict[str, str]] = {}
-        for row in rows_of(self.read_bytes("tables/columns.csv"), {}):
-            types.setdefault(row["table"], {})[row["column"]] = row["type"]
+        path = "tables/columns.csv"
+        data = self.read_bytes(path)
+        with self._reading(path):
+            for row in rows_of(data, {}):
+                types.setdefault(row["table"], {})[row["column"]] = row["type"]
         return types
 
     @cached_property
@@ -162,8 +195,12 @@ class Revision:
     def functions(self) -> Mapping[str, dict]:
         """The issued function of each dataset that has one, by dataset id."""
         paths = (path for path in self.files if path.startswith("functions/") and path.endswith(".json"))
-        records = (self.read_json(path) for path in paths)
-        return {record["dataset"]: record for record in records}
+        return {self._dataset(path, record): record for path in paths for record in [self._object(path)]}
+
+    def _dataset(self, path: str, record: dict) -> str:
+        if not isinstance(record.get("dataset"), str):
+            raise VerificationError(f"{self.path}/{printable(path)}: {NOT_READ_HERE}")
+        return record["dataset"]
 
 
 def read_revision(path: str | Path) -> Revision:

@@ -9,6 +9,7 @@ from pathlib import Path
 
 from fitlib.errors import FitlibError, InputError, Problem, VerificationError
 from fitlib.revision.disk import digest_of, read_regular, sha256, walk
+from fitlib.revision.ledger import LEDGER, differs_from_ledger
 from fitlib.revision.manifest import MANIFEST, RUN, SEAL, listed_files, load_manifest, read_seal
 from fitlib.revision.names import printable
 
@@ -36,8 +37,9 @@ class Difference:
 def verify_revision(path: str | Path) -> list[Difference]:
     """Compare every file of a revision with its manifest.
 
-    It tells of accidents and of careless edits. Whoever rewrites the manifest and ``run.sha256`` too leaves no trace
-    here; keep the manifest's SHA-256 elsewhere if that matters.
+    It tells of accidents and of careless edits. Whoever rewrites the manifest and ``run.sha256`` too is found out by
+    the study's list of revisions (``.revisions``), while the revision stands where it was published; whoever rewrites
+    that as well leaves no trace here: keep the manifest's SHA-256 elsewhere if that matters.
 
     Parameters
     ----------
@@ -71,6 +73,8 @@ def verify_revision(path: str | Path) -> list[Difference]:
     listed = {name: record["sha256"] for name, record in listed_files(manifest).items()}
     listed |= _sealed(folder, found)
     differences = [*_missing(listed, found), *_present(listed, found)]
+    if MANIFEST not in {difference.path for difference in differences} and differs_from_ledger(folder):
+        differences.append(Difference("altered", MANIFEST, f"altered: its SHA-256 is not the one in {LEDGER}"))
     return sorted(differences, key=lambda difference: difference.path)
 
 

@@ -11,15 +11,14 @@ from fitlib.observations.clusters import find_clusters
 from fitlib.observations.columns import DIRECTIONS
 from fitlib.observations.levels import group_by_label
 from fitlib.observations.numbers import read_number
+from fitlib.observations.run_columns import comes_in_blocks, named_as_series, words
 from fitlib.observations.tables import Table
-from fitlib.start.headers import words
 
 STIMULUS_WORDS = {"stimulus", "reference", "ref", "nominal", "set", "setpoint", "level", "applied", "standard", "known"}
 STIMULUS_WORDS |= {"load", "target", "x", "concentration", "actual", "imposed"}
 LEVEL_WORDS = {"nominal", "level", "set", "setpoint", "target", "step"}
 RESPONSE_WORDS = {"response", "reading", "indication", "indicated", "output", "signal", "measured", "display", "y"}
 RESPONSE_WORDS |= {"displayed", "instrument", "sensor", "current", "voltage", "counts", "deflection", "absorbance"}
-SERIES_WORDS = {"series", "run", "pass", "cycle", "sweep", "repeat", "trial"}
 OTHER_WORDS = {"time", "date", "timestamp", "index", "no", "nr", "id", "row", "number", "replicate"}
 OTHER_WORDS |= {"operator", "remark", "note", "comment"}
 LEAST_READABLE = 0.8
@@ -90,8 +89,7 @@ def _direction(columns: Sequence[Profile]) -> Guess | None:
 
 def _series_by_name(columns: Sequence[Profile]) -> Guess | None:
     for column in columns:
-        several = 0 < len(set(column.cells)) < len(column.cells)
-        if column.words & SERIES_WORDS and several and all(column.cells):
+        if named_as_series(column.name, column.cells):
             return Guess(column.name, "by its name", SURE)
     return None
 
@@ -99,12 +97,7 @@ def _series_by_name(columns: Sequence[Profile]) -> Guess | None:
 def _series_by_blocks(columns: Sequence[Profile], stimulus: Profile) -> Guess | None:
     """A column that stays the same while the stimulus passes through three values or more, block by block."""
     for column in columns:
-        values = list(dict.fromkeys(column.cells))
-        blocks = 1 + sum(a != b for a, b in zip(column.cells, column.cells[1:], strict=False))
-        if not all(values) or not 2 <= len(values) == blocks:
-            continue
-        cells = np.array(column.cells)
-        if all(np.unique(stimulus.numbers[cells == value]).size >= 3 for value in values):
+        if comes_in_blocks(column.cells, stimulus.numbers):
             return Guess(column.name, "its rows come in blocks that pass through several stimulus values", GUESS)
     return None
 

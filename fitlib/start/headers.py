@@ -1,4 +1,4 @@
-"""What a column's name says: its words, its quantity and its unit."""
+"""What a column's name says: its quantity and its unit."""
 
 from __future__ import annotations
 
@@ -15,12 +15,6 @@ _WRITTEN |= {"percent": "%", "ohm": "Ω", "Ohm": "Ω", "kohm": "kΩ", "kOhm": "k
 _BRACKETED = re.compile(r"(?P<name>.*?)\s*(?:\[(?P<square>[^\]]*)\]|\((?P<round>[^)]*)\))\s*")
 _QUOTIENT = re.compile(r"(?P<name>.*?\S)\s+(?:/|in)\s+(?P<unit>\S+)")  # "p / kPa", as in ISO 80000-1
 _SUFFIXED = re.compile(r"(?P<name>.+)[_ ](?P<unit>[^_ ]+)")
-
-
-def words(header: str) -> set[str]:
-    """Words of a column's name in small letters: ``refLevel_m`` gives ref, level and m."""
-    split = re.sub(r"([a-z])([A-Z])", r"\1 \2", header)
-    return set(re.findall(r"[^\W\d_]+", split.lower()))
 
 
 def split_unit(header: str) -> tuple[str, str | None]:

@@ -12,6 +12,7 @@ import numpy as np
 from fitlib.errors import InputError, Problem
 from fitlib.observations import sources
 from fitlib.observations.faults import Faults
+from fitlib.observations.numbers import read_number
 from fitlib.observations.tables import Table, read_table, sniff_delimiter
 from fitlib.observations.wording import listed, quoted
 from fitlib.start.counts import Counts, count
@@ -56,6 +57,8 @@ def _read(path: str) -> tuple[Table, str]:
     table = None if text is None else read_table(text, Path(path).name, sniff_delimiter(text), "point", faults)
     if len(faults):
         raise InputError(faults.problems())
+    if all(any(read_number(name, mark) is not None for mark in ("point", "comma")) for name in table.header if name):
+        raise _fail(path, "the first row holds numbers and no names; a header row is expected", line=1)
     return table, sniff_decimal(table)
 
 

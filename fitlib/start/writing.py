@@ -103,6 +103,13 @@ def _tolerance(proposal: Proposal) -> list[str]:
             "    # if several of them are visits to one level. A column with the level of each row is the better way.",
             f"    level_tolerance: {counts.tolerance!r}",
         ]
+    if found.sign == "strays":
+        return [
+            f"    # CHECK: {plural(len(found.strays), 'row')} set beside a level that other rows meet exactly, at most "
+            f"{number(found.width)} off ({found.groups} levels).",
+            "    # Values within this tolerance (in the unit of the stimulus) are one level:",
+            f"    level_tolerance: {counts.tolerance!r}",
+        ]
     return [
         f"    # CHECK: {found.distinct} distinct stimulus values form {found.groups} groups, each at most "
         f"{number(found.width)} wide and {number(found.gap)} or",
@@ -122,13 +129,19 @@ def _dataset(proposal: Proposal) -> list[str]:
         lines.append(f"    delimiter: {proposal.delimiter}")
     lines.append(f"    decimal: {proposal.decimal}")
     lines += _tolerance(proposal)
-    ends = f"[{number(proposal.counts.low)}, {number(proposal.counts.high)}]"
+    low, high = within(proposal.counts.low, proposal.counts.high)
     return [
         *lines,
-        f"    # measuring_interval: {ends}  # the default is the span of the levels used; never beyond them",
+        f"    # measuring_interval: [{low}, {high}]  # the default: from the first to the last level; never wider",
         "    evaluation: inverse  # CHECK: stimulus from response; or direct: response from stimulus",
         "    # record: {serial_number: ..., date: ..., reference_standard: ..., certificate: ...}",
     ]
+
+
+def within(low: float, high: float) -> tuple[str, str]:
+    """Two ends in six significant digits where that is exact or lies between them; in full where it does not."""
+    short = number(low), number(high)
+    return (short[0] if float(short[0]) >= low else repr(low)), (short[1] if float(short[1]) <= high else repr(high))
 
 
 def _families(proposal: Proposal) -> list[str]:

@@ -121,6 +121,8 @@ def fixed_responses_differ(draft: Draft) -> Iterator[Finding]:
 def loss_needed(draft: Draft) -> Iterator[Finding]:
     """A rule that compares losses says which scheme's; the others have no use for one."""
     rule, loss = draft.model.selection.rule, draft.model.selection.loss
+    if loss is UNKNOWN:
+        return
     if rule in RULES_WITHOUT_LOSS:
         if loss is not None:
             yield "selection.loss", f"this has no effect with the rule {rule}, which uses no held-out loss; remove it"
@@ -231,7 +233,9 @@ STUDY_RULES: tuple[Callable[[Draft], Iterator[Finding]], ...] = (
 
 
 def warnings_of(draft: Draft) -> Iterator[Finding]:
-    """Yield what is allowed but leaks or misleads; for a draft without faults."""
+    """Yield what is allowed but leaks, misleads or was forgotten; for a draft without faults."""
+    if UNFILLED in draft.model.purpose.lower():
+        yield "purpose", "this still says what is to be filled in; write what the functions are for"
     for place, scheme in enumerate(draft.schemes):
         decides = scheme.id == draft.model.selection.loss
         if scheme.unit == "observation":
@@ -240,6 +244,7 @@ def warnings_of(draft: Draft) -> Iterator[Finding]:
             yield "selection.loss", f"{scheme.id} decides: {LEAK}"
 
 
+UNFILLED = "to be filled in"  # as a proposed study says
 LEAK = (
     "where levels have replicates, observations of one level stand on both sides, "
     "and the loss is too small for high degrees"

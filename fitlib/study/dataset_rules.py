@@ -11,7 +11,7 @@ from fitlib.study.dataset_merge import Merged
 from fitlib.study.kinds import is_day
 from fitlib.study.models import ColumnsGroup
 from fitlib.study.shown import shown
-from fitlib.study.unknown import Finding
+from fitlib.study.unknown import UNKNOWN, Finding
 
 DAYS_IN_RECORD = ("date", "due")
 
@@ -37,7 +37,7 @@ def columns_differ(merged: Merged) -> Iterator[Finding]:
 
 def level_once(merged: Merged) -> Iterator[Finding]:
     """A level column says which level a row belongs to, so that a tolerance has no effect."""
-    if merged.value("columns.level") is None or merged.value("level_tolerance") is None:
+    if any(value is None or value is UNKNOWN for value in map(merged.value, ("columns.level", "level_tolerance"))):
         return
     name = "level_tolerance"
     if merged.is_default(name) and not merged.is_default("columns.level"):

@@ -15,6 +15,7 @@ from fitlib.study.names import id_fault
 from fitlib.study.shown import nearest, shown
 
 HIDDEN = frozenset({"Cc", "Cf", "Cs", "Co", "Cn", "Zl", "Zp"})  # Unicode general categories of what cannot be seen
+_NUMBER_IN_TEXT = re.compile(r"[-+]?([0-9]+([.,][0-9]*)?|[.,][0-9]+)([eE][-+]?[0-9]+)?(?P<rest>\s*([^\W\d_]|[%°]).*)?")
 OWN_SENTENCE = "fitlib"  # the pydantic error type of every message made here
 
 
@@ -33,13 +34,21 @@ def is_number(value: Any) -> bool:
     return isinstance(value, int | float) and not isinstance(value, bool) and math.isfinite(value)
 
 
+def without_unit(value: Any) -> str:
+    """Return the hint for a text that holds a number: with a unit behind it, or in quotes; else nothing."""
+    found = _NUMBER_IN_TEXT.fullmatch(value.strip()) if isinstance(value, str) else None
+    if found is None:
+        return ""
+    return "; write the number without unit" if found["rest"] else "; write the number without quotes"
+
+
 def whole(low: int, high: int | None = None) -> Any:
     """Return the kind "whole number from low to high"."""
     allowed = f"a whole number of {low} or more" if high is None else f"a whole number from {low} to {high}"
 
     def check(value: Any) -> int:
         if type(value) is not int or value < low or (high is not None and value > high):
-            raise not_allowed(value, allowed)
+            raise not_allowed(value, allowed + without_unit(value))
         return value
 
     return Annotated[int, Field(ge=low, le=high), BeforeValidator(check)]
@@ -51,7 +60,7 @@ def positive(below: float | None = None) -> Any:
 
     def check(value: Any) -> float:
         if not is_number(value) or value <= 0 or (below is not None and value >= below):
-            raise not_allowed(value, allowed)
+            raise not_allowed(value, allowed + without_unit(value))
         return float(value)
 
     return Annotated[float, Field(gt=0, lt=below), BeforeValidator(check)]
@@ -62,7 +71,7 @@ def not_negative() -> Any:
 
     def check(value: Any) -> float:
         if not is_number(value) or value < 0:
-            raise not_allowed(value, "0 or a number above 0")
+            raise not_allowed(value, "0 or a number above 0" + without_unit(value))
         return float(value)
 
     return Annotated[float, Field(ge=0), BeforeValidator(check)]
@@ -179,7 +188,7 @@ def _check_interval(value: Any) -> list[float]:
         raise not_allowed(value, allowed)
     for end in value:
         if not is_number(end):
-            raise refusal(f"{shown(end)} is not allowed as an end; {allowed}")
+            raise refusal(f"{shown(end)} is not allowed as an end; {allowed}{without_unit(end)}")
     if value[0] >= value[1]:
         raise refusal(f"[{shown(value[0])}, {shown(value[1])}] is not increasing; {allowed}")
     return [float(end) for end in value]

@@ -14,7 +14,7 @@ from fitlib.study.cross_rules import STUDY_RULES, Draft, warnings_of
 from fitlib.study.dataset_merge import merge
 from fitlib.study.dataset_rules import DATASET_RULES
 from fitlib.study.expansion import Found, expand
-from fitlib.study.messages import plain_sentences
+from fitlib.study.messages import misspelt_keys, plain_sentences
 from fitlib.study.model_base import TOLERANT
 from fitlib.study.models import StudyModel
 from fitlib.study.paths import StudyFolder
@@ -49,9 +49,9 @@ def load_study(path: str | PathLike[str]) -> Study:
     path = str(fspath(path))
     text = read_bytes(path)
     document = _read(path, decode(path, text))
-    model, findings = _validate(document)
+    model, findings, misspelt = _validate(document)
     draft, found, more = _check_rules(model, StudyFolder(Path(path).parent, Path(path)))
-    told = {key for key, _ in findings}
+    told = misspelt | {key for key, _ in findings}
     findings += [(key, message) for key, message in more if key not in told]
     if findings or document.faults:
         raise InputError(_in_order([*_refused(path, document), *_problems(path, document, findings)]))
@@ -70,15 +70,15 @@ def _read(path: str, text: str) -> Document:
     return document
 
 
-def _validate(document: Document) -> tuple[StudyModel, list[Finding]]:
-    """Return the model, with `UNKNOWN` in place of faulty values, and what is wrong with them."""
+def _validate(document: Document) -> tuple[StudyModel, list[Finding], set[str]]:
+    """Return the model, with `UNKNOWN` in place of faulty values, what is wrong with them, and the keys misspelt."""
     try:
-        return StudyModel.model_validate(document.data), []
+        return StudyModel.model_validate(document.data), [], set()
     except ValidationError as fault:
         errors = fault.errors(include_url=False)
     hidden = [fault.key for fault in document.faults if fault.hides]
     findings = plain_sentences(errors, document.data, hidden)
-    return StudyModel.model_validate(document.data, context=TOLERANT), findings
+    return StudyModel.model_validate(document.data, context=TOLERANT), findings, misspelt_keys(errors, document.data)
 
 
 def _check_rules(model: StudyModel, folder: StudyFolder) -> tuple[Draft, list[Found], list[Finding]]:

@@ -7,15 +7,35 @@ from collections.abc import Iterable, Sequence
 from typing import Any
 
 from fitlib.study.keys import keys_by_place
-from fitlib.study.kinds import OWN_SENTENCE
+from fitlib.study.kinds import OWN_SENTENCE, without_unit
 from fitlib.study.models import TOLD_APART
 from fitlib.study.positions import child, parent_of, within
 from fitlib.study.shown import nearest, shown
 from fitlib.study.unknown import Finding
 
 NEEDS_A_GROUP = frozenset({"model_type", "dict_type", "model_attributes_type"})
+GROUPS = {
+    "stimulus": "{quantity: water level, unit: m}",
+    "response": "{quantity: loop current, unit: mA}",
+    "columns": "{stimulus: level_m, response: current_mA, series: run}",
+    "record": "{serial_number: LS-101, date: 2026-04-03}",
+    "verification_points": "{where: {run: 9}}",
+    "where": "{run: 2, level_m: 4.0}",
+    "families[]": "{family: polynomial, degree: 1..3}",
+    "validation[]": "{scheme: leave_one_level_out}",
+    "datasets[]": "{id: LS-101, files: [LS-101.csv]}",
+    "exclusions[]": "{where: {run: 2}, reason: cable moved, person: shift lead, date: 2026-04-03}",
+    "selection": "{rule: supported_gain, loss: leave_one_level_out}",
+    "require": "{monotone: true, degrees_of_freedom: 3}",
+    "target_uncertainty": "{expanded: 0.01, coverage_factor: 2}",
+}
 UNKNOWN_KEY = "extra_forbidden"
 MISSING_KEY = "missing"
+
+
+def misspelt_keys(errors: Sequence[dict[str, Any]], data: Any) -> set[str]:
+    """Return the dotted keys that are most likely meant by unknown ones."""
+    return {child(_parent(error, data), close) for error in errors if (close := _nearest_of(error, data))}
 
 
 def plain_sentences(errors: Sequence[dict[str, Any]], data: Any, hidden: Iterable[str] = ()) -> list[Finding]:
@@ -32,7 +52,7 @@ def plain_sentences(errors: Sequence[dict[str, Any]], data: Any, hidden: Iterabl
     """
     hidden = tuple(hidden)
     located = [(_locate(error, error["loc"], data), error) for error in errors]
-    misspelt = {child(_parent(error, data), close) for error in errors if (close := _nearest_of(error, data))}
+    misspelt = misspelt_keys(errors, data)
     findings = []
     for key, error in located:
         if error["type"] == MISSING_KEY and key in misspelt:
@@ -82,7 +102,7 @@ def _finding(key: str, error: dict[str, Any], data: Any) -> Finding:
     if kind == UNKNOWN_KEY:
         return key, _unknown_key(error, _known_beside(error, data))
     if kind in NEEDS_A_GROUP:
-        return key, f"{shown(value)} is not allowed; a group of keys"
+        return key, f"{shown(value)} is not allowed; a group of keys{_such_as(key)}{without_unit(value)}"
     if kind == "list_type":
         return key, f"{shown(value)} is not allowed; a list"
     if kind == "too_short":
@@ -90,6 +110,11 @@ def _finding(key: str, error: dict[str, Any], data: Any) -> Finding:
     if kind.startswith("union_tag"):
         return _untold(key, value)
     return key, f"{shown(value)} is not allowed; {error['msg'][:1].lower()}{error['msg'][1:]}"
+
+
+def _such_as(key: str) -> str:
+    example = GROUPS.get(_place_of(key).rpartition(".")[2])
+    return f" such as {example}" if example else ""
 
 
 def _untold(key: str, value: Any) -> Finding:

@@ -2,7 +2,7 @@
 
 The study is validated once strictly, which gives the messages. Where that fails it is validated a second time in the
 tolerant way: each faulty value becomes `UNKNOWN` and the rest is kept, so that the rules between keys are checked in
-the same run.
+the same run. A key that is missing while an unknown one resembles it was most likely misspelt: it is `UNKNOWN` too.
 """
 
 from __future__ import annotations
@@ -12,6 +12,7 @@ from typing import Any
 
 from pydantic import BaseModel, ConfigDict, ValidationError, ValidationInfo, field_validator, model_validator
 
+from fitlib.study.shown import nearest
 from fitlib.study.unknown import UNKNOWN
 
 TOLERANT = {"tolerant": True}  # pass as `context`
@@ -26,6 +27,8 @@ def tolerate(value: Any, handler: Callable[[Any], Any], info: ValidationInfo) ->
     """Validate a value; in the tolerant way a faulty one becomes `UNKNOWN`."""
     if not tolerant(info):
         return handler(value)
+    if value is UNKNOWN:
+        return UNKNOWN
     try:
         return handler(value)
     except ValidationError:
@@ -45,8 +48,9 @@ class Model(BaseModel):
         if not isinstance(value, dict):
             return UNKNOWN
         known = {name: item for name, item in value.items() if name in cls.model_fields}
+        misspelt = {nearest(str(name), cls.model_fields) for name in value if name not in cls.model_fields}
         for name, field in cls.model_fields.items():
-            if field.is_required():
+            if field.is_required() or name in misspelt:
                 known.setdefault(name, UNKNOWN)
         return handler(known)
 

@@ -69,7 +69,7 @@ def issue(tmp_path, monkeypatch, function_records):
 
     def write(kind="rising", **changes):
         record = getattr(function_records, kind)(**changes)
-        Path("LS-101.json").write_text(json.dumps(record), encoding="utf-8")
+        Path("LS-101.json").write_text(json.dumps(function_records.sealed(record)), encoding="utf-8")
         return record
 
     return write

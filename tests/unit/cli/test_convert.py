@@ -66,11 +66,11 @@ def test_direct_evaluation_and_its_inverse(issue, fitlib):
     status, out, _ = fitlib("convert", "LS-101.json", "--response", "48.2", "48.6")
     assert status == 4
     first, second = out.splitlines()
-    assert first.startswith("48.2 m: not_unique: 48.2 m belongs to ") and "the function turns at " in first
+    assert first.startswith("48.2 m: not_unique: response 48.2 m belongs to ") and "the function turns at " in first
     assert second.startswith("48.6 m: not_evaluated: ")
     assert fitlib("convert", "LS-101.json", "--stimulus", "120.1")[:2] == (
         4,
-        "120.1 m3/h: above_range: 120.1 m3/h lies above the upper end of the measuring interval, 120 m3/h\n",
+        "120.1 m3/h: above_range: stimulus 120.1 m3/h lies above the upper end of the measuring interval, 120 m3/h\n",
     )
 
 
@@ -98,7 +98,7 @@ def test_a_file_becomes_a_table_and_what_is_wrong_is_told_by_row(issue, fitlib):
     assert err.splitlines()[-5:] == [
         "readings.csv: column current_mA, 4 readings: 1 above_range, 2 not_a_number, 1 within_interval",
         "readings.csv:3: the cell is empty",
-        "readings.csv:4: 'broken' is not a number",
+        "readings.csv:4: the cell holds 'broken', which is not a number",
         "readings.csv: 1 blank line passed over: line 5",
         "fitlib: 3 of 4 readings without a value",
     ]
@@ -168,3 +168,23 @@ def test_a_damaged_function_is_told_with_every_fault(issue, fitlib):
         'LS-101.json: verdict: "fine" is not allowed; adequate or inadequate or not_evaluated',
         'LS-101.json: choice: "lucky" is not allowed; decided or tie',
     ]
+
+
+def test_one_reading_is_not_called_a_mean(issue, fitlib):
+    issue()
+    _, out, _ = fitlib("convert", "LS-101.json", "--response", "12.4")
+    assert "95 %, one reading)" in out
+    _, out, _ = fitlib("convert", "LS-101.json", "--response", "12.4", "--readings", "3")
+    assert "95 %, mean of 3 readings)" in out
+
+
+def test_a_function_edited_by_hand_is_refused(issue, fitlib):
+    issue()
+    path = Path("LS-101.json")
+    path.write_text(
+        path.read_text().replace('"reading_standard_deviation": 0.004', '"reading_standard_deviation": 1e308')
+    )
+    status, out, err = fitlib("convert", "LS-101.json", "--response", "12.4")
+    assert (status, out) == (2, "")
+    assert "LS-101.json: digest: the function was changed after it was issued" in err
+    assert "LS-101.json: reading_standard_deviation: 1e+308 is not allowed" in err

@@ -10,9 +10,9 @@ from fitlib.engine import DryRun, RunSummary, SummaryRow
 from fitlib.errors import FitlibError, Problem
 
 
-def row(dataset, verdict="adequate", choice="decided", candidate="polynomial-2"):
+def row(dataset, verdict="adequate", choice="decided", candidate="polynomial-2", **more):
     """The outcome of one dataset."""
-    return SummaryRow(dataset, candidate, verdict, choice, 1.23456e-5, 2.5e-5, "polynomial-3", 0.1234567)
+    return SummaryRow(dataset, candidate, verdict, choice, 1.23456e-5, 2.5e-5, "polynomial-3", 0.1234567, **more)
 
 
 def summary(*rows, **changes):
@@ -51,9 +51,9 @@ def test_the_table_and_the_path_are_printed(engine, fitlib):
     assert (status, err) == (0, "")
     lines = out.splitlines()
     assert lines[:3] == [
-        "dataset      candidate     verdict     choice        loss  outer_loss  runner_up     margin",
-        "LS-101       polynomial-2  adequate    decided  1.235e-05     2.5e-05  polynomial-3   0.123",
-        "LS-102-long  polynomial-2  inadequate  tie      1.235e-05     2.5e-05  polynomial-3   0.123",
+        "dataset      candidate     verdict     choice        loss  outer_loss  runner_up     margin  warnings",
+        "LS-101       polynomial-2  adequate    decided  1.235e-05     2.5e-05  polynomial-3   0.123         0",
+        "LS-102-long  polynomial-2  inadequate  tie      1.235e-05     2.5e-05  polynomial-3   0.123         0",
     ]
     assert "2 datasets: 1 adequate, 1 inadequate, 1 tie" in lines
     assert "first revision: 7 steps computed, 3 kept" in lines
@@ -62,7 +62,7 @@ def test_the_table_and_the_path_are_printed(engine, fitlib):
 
 def test_what_is_not_there_is_shown_as_absent():
     empty = SummaryRow("LS-101", None, "not_evaluated", None, None, None, None, None)
-    assert describe_run(summary(empty))[1].split() == ["LS-101", "-", "not_evaluated", "-", "-", "-", "-", "-"]
+    assert describe_run(summary(empty))[1].split() == ["LS-101", "-", "not_evaluated", "-", "-", "-", "-", "-", "0"]
 
 
 def test_of_hundreds_those_that_need_a_person_are_shown_first_and_the_table_is_named():
@@ -114,9 +114,15 @@ def test_defaults_leave_the_number_of_batches_to_the_engine_and_use_all_cores(en
     [
         ([row("a"), row("b")], 0, ""),
         ([row("a"), row("b", "inadequate")], 4, "of 2 datasets, 1 not adequate: a person has to decide"),
-        ([row("a", "not_evaluated", None)], 4, "of 1 datasets, 1 not adequate: a person has to decide"),
+        ([row("a", "not_evaluated", None)], 4, "of 1 dataset, 1 not adequate: a person has to decide"),
         ([row("a"), row("b", choice="tie")], 4, "of 2 datasets, 1 with a tie: a person has to decide"),
-        ([row("a", "inadequate", "tie")], 4, "of 1 datasets, 1 not adequate and 1 with a tie: a person has to decide"),
+        ([row("a", "inadequate", "tie")], 4, "of 1 dataset, 1 not adequate and 1 with a tie: a person has to decide"),
+        ([row("a", target_met=True), row("b", target_met=None)], 0, ""),
+        (
+            [row("a", target_met=False), row("b")],
+            4,
+            "of 2 datasets, 1 above the target uncertainty: a person has to decide",
+        ),
     ],
 )
 def test_strict_asks_for_a_person(rows, status, said, engine, fitlib):
@@ -165,3 +171,41 @@ def test_options_without_effect_are_refused_in_a_dry_run(engine, fitlib):
     status, _, err = fitlib("run", "study.yaml", "--dry-run", "--strict", "--cores", "2", "--fresh", "--profile", "x")
     assert status == 2 and not calls
     assert sorted(line.split(": ")[1] for line in err.splitlines()) == ["--cores", "--fresh", "--profile", "--strict"]
+
+
+def test_below_the_table_stands_why_a_dataset_is_not_adequate():
+    reason = "a smooth misfit of 0.02 m:\nlevel residuals follow one another"
+    rows = [
+        row("LS-101", reason="no smooth misfit", warnings=2),
+        row("LS-102", "inadequate", reason=reason, warnings=12),
+        row("LS-103", "not_evaluated", None, reason=""),
+        row("LS-104", reason="no smooth misfit", target_met=False),
+    ]
+    lines = describe_run(summary(*rows))
+    assert [line.split()[-1] for line in lines[:5]] == ["warnings", "2", "12", "0", "0"]
+    assert lines[5:8] == [
+        "LS-102: inadequate: a smooth misfit of 0.02 m: level residuals follow one another",
+        "LS-103: not_evaluated",
+        "LS-104: the target uncertainty is not met",
+    ]
+    assert "4 datasets: 2 adequate, 1 inadequate, 1 not_evaluated, 1 above the target uncertainty" in lines
+
+
+def test_a_dataset_above_the_target_is_among_those_shown_first():
+    rows = [row(f"LS-{n:03}") for n in range(300)]
+    rows[299] = row("LS-299", target_met=False)
+    assert describe_run(summary(*rows))[LISTED].startswith("LS-299")
+
+
+def test_an_altered_revision_is_told_after_the_table(engine, fitlib):
+    engine(summary(row("LS-101", "inadequate"), altered="rev-0001 is not as it was published"))
+    status, out, err = fitlib("run", "study.yaml", "--strict")
+    assert (status, err) == (3, "fitlib: rev-0001 is not as it was published\n")
+    assert out.splitlines()[-1].startswith("revision: ")
+
+
+def test_a_dry_run_says_that_the_latest_revision_was_altered(engine, fitlib):
+    engine(DryRun("level-sensors", False, None, {}, ("results are made again",), (), "rev-0001 is altered", True))
+    status, out, err = fitlib("run", "study.yaml", "--dry-run")
+    assert (status, err) == (3, "fitlib: rev-0001 is altered\n")
+    assert out.splitlines() == ["level-sensors: results are made again", "level-sensors: nothing else has changed"]

@@ -69,7 +69,7 @@ def test_text_blanks_and_ragged_rows_are_reported_and_kept(records, load):
     readings = read(text)
     assert [(row.number, row.fault) for row in readings.rows] == [
         (2, ""),
-        (3, "'broken' is not a number"),
+        (3, "the cell holds 'broken', which is not a number"),
         (4, "the cell is empty"),
         (5, "the row has 3 cells, the header 2"),
         (6, "the row has 1 cells, the header 2"),
@@ -134,7 +134,7 @@ def test_semicolons_and_decimal_commas():
     readings = read("tank;y\nnorth;12,5\n", decimal="comma")
     assert readings.rows[0].reading == 12.5
     (row,) = read("tank;y\nnorth;12,5\n", column="y").rows
-    assert row.fault == "'12,5' is not a number; for a decimal comma give --decimal comma"
+    assert row.fault == "the cell holds '12,5', which is not a number; for a decimal comma give --decimal comma"
     (zero,) = read("tank;y\nnorth;0,0\n", column="y").rows
     assert "--decimal comma" in zero.fault
     with pytest.raises(InputError, match="another delimiter than comma"):
@@ -175,3 +175,55 @@ def test_single_numbers_make_a_table_too(records, load):
     rows = list(csv.DictReader(io.StringIO(table.text)))
     assert [row["response"] for row in rows] == ["12.0", "99.0"]
     assert (rows[0]["response_unit"], table.without_value) == ("mA", 1)
+
+
+SIGNS = ["=", "+", "-", "@", "\t", " =", "'=", "\uff1d"]
+
+
+def test_every_cell_that_is_carried_through_is_guarded(records, load):
+    names = [f"{sign}n{place}" for place, sign in enumerate(SIGNS)]
+    cells = [f"{sign}cmd" for sign in SIGNS]
+    text = "\n".join([",".join([*names, "y"]), ",".join([*cells, "12.0"]), ",".join([*cells, "bad"])]) + "\n"
+    rows, _ = convert(text, load(records["rising"]()), column="y")
+    for row in rows:
+        assert list(row.values())[1 : len(cells) + 1] == [f"'{cell}" for cell in cells]
+        # names are stripped of white space before they are guarded
+        assert list(row)[1 : len(cells) + 1] == ["'=n0", "'+n1", "'-n2", "'@n3", "n4", "'=n5", "''=n6", "'\uff1dn7"]
+
+
+def test_units_are_guarded_in_every_column(records, load):
+    record = records["rising"](
+        response={"quantity": "current", "unit": "=A1"}, stimulus={"quantity": "l", "unit": "@m"}
+    )
+    table = answers_table([load(record).convert(12.0)], "response")
+    (row,) = csv.DictReader(io.StringIO(table.text))
+    assert (row["response_unit"], row["unit"]) == ("'=A1", "'@m")
+
+
+@pytest.mark.parametrize("response", [-12.0, 99.0, 12.0, float("nan")])
+def test_no_note_begins_with_a_sign(response, records, load):
+    function = load(records["rising"]())
+    for answer in (function.invert(response), function.evaluate(response)):
+        assert answer.note == guard(answer.note)
+    refused = function.invert(-12.0).note
+    assert refused.startswith("response -12 mA lies beyond 4 mA, the response at 0 m")
+    assert function.evaluate(-12.0).note.startswith("stimulus -12 m lies below the lower end")
+
+
+def test_no_fault_of_a_row_begins_with_a_sign_or_an_apostrophe():
+    faults = [row.fault for row in read("id,y\na,=1\nb,-x\nc,\nd,1,2\n", column="y").rows]
+    assert all(fault[0].isalpha() and fault == guard(fault) for fault in faults)
+    assert faults[0] == "the cell holds '=1', which is not a number"
+
+
+@pytest.mark.parametrize(
+    ("text", "decimal"), [("12.3\n12.4\n", "point"), ("1;2;12,3\n2;2;12,4\n", "comma"), ("\n-1e3,4\n5,6\n", "point")]
+)
+def test_a_file_without_a_header_row_is_refused(text, decimal):
+    line = 2 if text.startswith("\n") else 1
+    with pytest.raises(InputError, match=f"readings.csv:{line}: the first row holds numbers and no names"):
+        read(text, decimal=decimal)
+
+
+def test_one_name_makes_a_header():
+    assert read("2026,y\n5,6\n", column="y").header == ("2026", "y")

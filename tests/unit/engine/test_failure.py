@@ -1,13 +1,11 @@
 """What a person is told when a run did not come to its end."""
 
-import json
-
 import pytest
 
 from fitlib.engine.failure import failure, last_lines
+from fitlib.engine.files import write_sealed
 from fitlib.engine.process import Ended
 from fitlib.engine.progress import Events
-from fitlib.plan import digest
 
 
 @pytest.fixture
@@ -28,6 +26,13 @@ def run(bench, tmp_path):
 def say(path, text):
     path.parent.mkdir(parents=True, exist_ok=True)
     path.write_text(text)
+
+
+def write_output(run, failures):
+    content = {"format": 1, "batch": "00", "digest": run.batch.digest, "failures": failures}
+    account = {"computed": {}, "kept": {}}
+    path = run.work.batches / run.batch.file_name
+    write_sealed(path, {**content, "members": {}, "account": account, "seconds": 0.1})
 
 
 def test_an_interrupted_run_has_the_status_that_shells_give(run):
@@ -55,17 +60,41 @@ def test_the_log_of_an_earlier_job_is_not_quoted(run):
 
 
 def test_failed_datasets_are_named(run):
-    content = {"format": 1, "digest": run.batch.digest, "failures": [{"dataset": "cell-2", "message": "planted"}]}
-    say(run.work.batches / run.batch.file_name, json.dumps({**content, "sha256": digest(content)}))
+    write_output(run, [{"dataset": "cell-2", "message": "planted"}])
     assert str(run(stage="publishing")).startswith("cell-2: planted\nnothing was published; ")
 
 
 def test_a_failed_publication_is_quoted(run):
-    content = {"format": 1, "digest": run.batch.digest, "failures": []}
-    say(run.work.batches / run.batch.file_name, json.dumps({**content, "sha256": digest(content)}))
+    write_output(run, [])
     say(run.work.publish_log(run.plan.digest), "fitlib: the folder cannot be written\n")
     assert str(run(stage="publishing")).startswith("the folder cannot be written\nnothing was published; ")
 
 
 def test_a_missing_log_says_nothing(tmp_path):
     assert last_lines(tmp_path / "none.log", 3) == []
+
+
+SNAKEMAKE = """\
+Using workflow specific profile /place/workflow/profiles/default for setting default command line arguments.
+Traceback (most recent call last):
+
+  File "/place/snakemake/cli.py", line 2101, in args_to_api
+    workflow_api = snakemake_api.workflow(
+                   ^^^^^^^^^^^^^^^^^^^^^^^
+  File "/place/fitlib/engine/workflow.py", line 128, in _prepare
+    work.create()
+
+PlantedError: what went wrong
+"""
+
+
+def test_code_and_profiles_are_not_quoted(tmp_path):
+    log = tmp_path / "run.log"
+    log.write_text(SNAKEMAKE)
+    assert last_lines(log, 8) == ["PlantedError: what went wrong"]
+
+
+def test_lines_with_an_indent_are_quoted_where_they_are_no_code(tmp_path):
+    log = tmp_path / "run.log"
+    log.write_text(SNAKEMAKE + "Error in rule fit_batch:\n    jobid: 1\n")
+    assert last_lines(log, 8) == ["PlantedError: what went wrong", "Error in rule fit_batch:", "jobid: 1"]

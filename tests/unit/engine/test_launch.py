@@ -37,6 +37,7 @@ def test_an_unchanged_study_starts_no_workflow(done, no_workflow):
     assert summary.note == "nothing has changed since: no work, no new revision"
     assert summary.path == str(done.results / "trial" / "rev-0001")
     assert [row.dataset for row in summary.rows] == ["cell-1", "cell-2"]
+    assert [(row.warnings, row.target_met) for row in summary.rows] == [(2, None), (2, None)]
 
 
 def test_fresh_starts_the_workflow_all_the_same(done, no_workflow):
@@ -88,11 +89,31 @@ def test_a_profile_of_the_workflow_is_given_by_name(bench, no_workflow, profile)
 
 def test_a_profile_folder_is_found_from_where_the_user_stands(bench, no_workflow, monkeypatch):
     (bench.root / "mine").mkdir()
+    (bench.root / "mine" / "profile.yaml").write_text("rerun-triggers: mtime\n")
     monkeypatch.chdir(bench.root)
     with pytest.raises(FitlibError):
         start(bench, profile="mine")
     command = no_workflow[0]
     assert command[command.index("--profile") + 1] == str(bench.root / "mine")
+
+
+def test_a_profile_file_is_found_from_where_the_user_stands(bench, no_workflow, monkeypatch):
+    bench.write("mine.yaml", "rerun-triggers: mtime\n")
+    monkeypatch.chdir(bench.root)
+    with pytest.raises(FitlibError):
+        start(bench, profile="mine.yaml")
+    command = no_workflow[0]
+    assert command[command.index("--profile") + 1] == str(bench.root / "mine.yaml")
+
+
+@pytest.mark.parametrize("profile", ["nosuch", "no/such", "empty", ""])
+def test_a_profile_that_is_nowhere_is_refused_before_anything_is_made(bench, no_workflow, monkeypatch, profile):
+    (bench.root / "empty").mkdir()  # a folder without settings
+    monkeypatch.chdir(bench.root)
+    with pytest.raises(InputError, match=rf"^--profile ?{profile}: no such profile: .* this workflow \(default\)"):
+        start(bench, profile=profile)
+    assert no_workflow == []
+    assert not bench.results.exists()
 
 
 def test_a_failed_workflow_says_where_the_details_are(bench, no_workflow):

@@ -8,6 +8,7 @@ import pytest
 from fitlib.errors import InputError
 from fitlib.observations import check_observations, read_observations, sources
 from fitlib.observations.tables import sniff_delimiter
+from fitlib.study import load_study
 
 PLAIN = "x,y\n0,4.1\n1,5.2\n2,6.3\n"
 
@@ -91,7 +92,6 @@ def test_several_files_are_read_in_the_order_of_the_study(read):
         (b"\xef\xbb\xbfx,y\r\n0,\xe4\r\n", 2, "byte 10 (0xe4) is not UTF-8 text; save the file as UTF-8"),
         ("x,y\n0,1\n".encode("utf-16"), 1, "is encoded as UTF-16 (byte order mark at byte 0); save it as UTF-8"),
         (b"x,y,x\n0,1,2\n", 1, 'column name "x" occurs 2 times (fields 1, 3)'),
-        (b"x,yy\n0,1\n", 1, 'columns.response: there is no column "y"; did you mean "yy"? the file has "x", "yy"'),
         (b'x,y\n0,1\n1,"2\n2,3\n', 3, "a quotation mark opened in this row is not closed"),
     ],
 )
@@ -100,9 +100,27 @@ def test_a_file_that_cannot_be_read_gives_one_plain_message(problems, content, l
     assert [(p.file, p.line, p.key, p.message) for p in found] == [("bench/a.csv", line, "datasets[0]", message)]
 
 
+def test_a_missing_column_is_blamed_on_the_key_that_names_it(problems):
+    (found,) = problems({"a.csv": "x,yy\n0,1\n"})
+    assert str(found) == (
+        "bench/study.yaml:9: datasets[0].columns.response: "
+        'column "y" is not in a.csv; its columns are "x", "yy"; did you mean "yy"?'
+    )
+
+
+def test_a_missing_column_is_blamed_on_the_defaults_where_they_name_it(load, tmp_path):
+    load({"a.csv": PLAIN})
+    path = tmp_path / "bench" / "study.yaml"
+    text = path.read_text().replace("    columns: {stimulus: x, response: y}\n", "")
+    path.write_text(text.replace("datasets:", "dataset_defaults:\n  columns: {stimulus: x, response: Y2}\ndatasets:"))
+    (found,), _ = check_observations(load_study("bench/study.yaml"))
+    assert (found.line, found.key) == (7, "dataset_defaults.columns.response")
+    assert found.message.startswith('column "Y2" is not in a.csv; its columns are')
+
+
 def test_missing_columns_are_all_named_at_once_with_the_delimiter_hint(problems):
     found = problems({"a.csv": "x;y\n0;1\n"}, "delimiter: comma")
-    assert [problem.line for problem in found] == [1, 1]
+    assert [problem.key for problem in found] == ["datasets[0].columns.stimulus", "datasets[0].columns.response"]
     assert all("declare the delimiter" in problem.message for problem in found)
 
 

@@ -258,7 +258,11 @@ def test_an_uncertainty_that_changed_alone_is_told(shop, compare):
     after = one(shop)
     after["results"][0]["function"]["level_standard_deviation"] = 0.02
     line = compare(one(shop), after).effects()[0]
-    assert line.endswith("standard deviation of level deviation from 0 to 0.02 mA.")
+    assert line.endswith("; standard deviation that averaging does not divide from 0 to 0.02 mA.")
+    after = one(shop)
+    after["results"][0]["function"]["reading_standard_deviation"] *= 2
+    line = compare(one(shop), after).effects()[0]
+    assert "; standard deviation of a reading from " in line and "repeatability" not in line
 
 
 def test_losses_of_different_schemes_are_not_set_side_by_side(shop, compare):

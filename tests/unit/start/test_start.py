@@ -7,10 +7,11 @@ import pytest
 
 from fitlib.errors import InputError
 from fitlib.observations import check_observations
+from fitlib.observations.run_columns import words
 from fitlib.start import propose_study, write_new
-from fitlib.start.headers import split_unit, words
+from fitlib.start.headers import split_unit
 from fitlib.start.proposal import study_name
-from fitlib.start.writing import scalar, support
+from fitlib.start.writing import scalar, support, within
 from fitlib.study import load_study
 
 
@@ -76,7 +77,7 @@ def propose(folder, text, name="Batch 7.csv"):
 def test_a_proposal_passes_the_loader_and_the_reader_unchanged(folder, kind):
     _, study = propose(folder, FILES[kind])
     problems, (observations,) = check_observations(study)
-    assert problems == []
+    assert [problem for problem in problems if problem.severity == "error"] == []
     assert set(observations.state) == {"used"}
     assert len(observations.row) == FILES[kind].count("\n") - 1
     assert study.datasets[0].files == ("Batch 7.csv",)
@@ -98,7 +99,7 @@ def test_columns_series_direction_and_units_are_taken_from_names(folder):
     assert study.families[0].degrees == (1, 2, 3, 4, 5)
     schemes = [scheme.scheme for scheme in study.validation]
     assert schemes == ["leave_one_level_out", "leave_one_series_out", "leave_one_out", "bootstrap"]
-    assert (study.selection.rule, study.selection.loss) == ("one_standard_error", "leave_one_level_out")
+    assert (study.selection.rule, study.selection.loss) == ("supported_gain", "leave_one_level_out")
 
 
 def test_setting_scatter_gives_a_level_tolerance_to_be_checked(folder):
@@ -172,6 +173,8 @@ def test_rows_that_cannot_be_read_are_told_and_left_to_the_check(folder):
         (b"x,y\n1,2\n1,3\n", "fewer than two levels"),
         (b"x,y,x\n1,2,3\n", 'column name "x" occurs 2 times'),
         (b"x,y\n1,\xff\n", "is not UTF-8 text"),
+        (b"0,4.1\n1,5.2\n2,6.3\n", "the first row holds numbers and no names; a header row is expected"),
+        (b"0;4,1\n1;5,2\n2;6,3\n", "the first row holds numbers and no names; a header row is expected"),
         (b"x" * 101 + b",y\n1,2\n2,3\n", "at most 100 characters long"),
     ],
 )
@@ -239,3 +242,43 @@ def test_names_are_split_into_words():
 @pytest.mark.parametrize(("text", "yaml"), [("run", "run"), ("no", '"no"'), ("a: b", '"a: b"'), ("1", '"1"')])
 def test_text_that_yaml_could_misread_is_quoted(text, yaml):
     assert scalar(text) == yaml
+
+
+def strayed():
+    """Three runs over nine levels, twice each; three of the set values are a little off."""
+    off = {5: 0.02, 30: -0.01, 50: 0.03}
+    rows = [(2 * level, 4 + 1.6 * level + 0.001 * k, run) for run in (1, 2, 3) for level in range(9) for k in (0, 1)]
+    return [(round(x + off.get(n, 0), 2), round(y, 4), run) for n, (x, y, run) in enumerate(rows)]
+
+
+def test_set_values_that_stray_give_a_level_tolerance_that_restores_the_levels(folder):
+    text, study = propose(folder, table(["level_m", "current_mA", "run"], strayed()))
+    assert "CHECK: 3 rows set beside a level that other rows meet exactly, at most 0.03 off (9 levels)" in text
+    assert "not needed" not in text and 0.03 < study.datasets[0].level_tolerance < 1.9
+    _, (observations,) = check_observations(study)
+    assert observations.level_index.max() == 8 and observations.notes == ()
+
+
+def test_the_interval_proposed_is_that_of_the_levels_and_can_be_taken_as_it_stands(folder):
+    text, study = propose(folder, table(["run", "reference [kPa]", "reading (V)"], scattered()))
+    line = next(line for line in text.splitlines() if "# measuring_interval: [" in line)
+    assert line.endswith("# the default: from the first to the last level; never wider")
+    _, (observations,) = check_observations(study)
+    levels = np.unique(observations.level)
+    low, high = (float(end) for end in line.split("[")[1].split("]")[0].split(","))
+    assert levels[0] <= low < levels[0] + 1e-5 and levels[-1] - 1e-4 < high <= levels[-1]
+
+
+@pytest.mark.parametrize(
+    ("low", "high", "expected"),
+    [
+        (0.0, 10.0, ("0", "10")),
+        (1.0000004, 2.0000006, ("1.0000004", "2")),
+        (1234567.0, 7654321.0, ("1.23457e+06", "7.65432e+06")),
+        (1234563.0, 7654326.0, ("1234563.0", "7654326.0")),
+    ],
+)
+def test_ends_are_shortened_inwards_only(low, high, expected):
+    shown = within(low, high)
+    assert low <= float(shown[0]) and float(shown[1]) <= high
+    assert shown == expected

@@ -301,3 +301,11 @@ def test_a_target_in_two_units_is_refused(bench, valid):
 def test_each_column_has_one_role(bench, valid, columns, key, word):
     _, found, message = bench.only(valid, ("{stimulus: flow, response: hertz}", columns))
     assert found == f"datasets[0].{key}" and word in message
+
+
+@pytest.mark.parametrize(("purpose", "warned"), [('"to be filled in: what for"', 1), ("Fill tanks to the mark.", 0)])
+def test_a_purpose_that_nobody_wrote_is_warned_of(bench, valid, purpose, warned):
+    study = bench.load(valid, ("stimulus: {quantity", f"purpose: {purpose}\nstimulus: {{quantity"))
+    found = [warning for warning in study.warnings if warning.key == "purpose"]
+    assert len(found) == warned
+    assert all(warning.severity == "warning" and warning.line == 4 for warning in found)

@@ -87,3 +87,44 @@ def test_the_list_of_keys_is_read_from_the_models():
     assert {"study", "level_tolerance", "folds", "draws", "ids_from", "coverage_factor", "where"} <= set(study_keys())
     assert keys_by_place()["selection.require"] == {"monotone", "degrees_of_freedom"}
     assert keys_by_place()["datasets[].exclusions[]"] == {"where", "reason", "person", "date"}
+
+
+SEED_AND_SCHEMES = (
+    "random_seed: 1\nvalidation: [{scheme: leave_one_level_out}, {scheme: bootstrap, draws: 50}]\nfamilies:"
+)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "key"),
+    [
+        ("validation:", "validaton:", "validaton"),
+        ("random_seed:", "random_sed:", "random_sed"),
+        ("{scheme: bootstrap,", "{scheme: bootstrap, ", ""),
+        ("loss:", "los:", "selection.los"),
+        ("columns: {stimulus", "colums: {stimulus", "datasets[0].colums"),
+    ],
+)
+def test_what_follows_only_from_a_misspelt_key_is_not_told(bench, valid, old, new, key):
+    text = valid.replace("families:", SEED_AND_SCHEMES)
+    if key:
+        assert bench.only(text, (old, new))[1] == key
+    else:
+        bench.load(text, (old, new))
+
+
+def test_a_misspelt_key_beside_the_right_one_hides_nothing(bench, valid):
+    text = valid.replace(
+        "families:", "random_seed: 1\nvalidaton: 3\nvalidation: [{scheme: leave_one_level_out}]\nfamilies:"
+    )
+    assert [problem.key for problem in bench.problems(text)] == ["random_seed", "validaton"]
+
+
+def test_misspelt_defaults_do_not_blame_the_datasets(bench, valid):
+    text = valid.replace("    columns: {stimulus: flow, response: hertz}\n", "").replace(
+        "datasets:", "dataset_default:\n  columns: {stimulus: flow, response: hertz}\ndatasets:"
+    )
+    assert bench.only(text)[1] == "dataset_default"
+
+
+def test_a_loss_that_is_misspelt_beside_a_rule_without_loss_is_told_once(bench, valid):
+    assert bench.only(valid, ("loss:", "los:"), ("one_standard_error", "bic"))[1] == "selection.los"

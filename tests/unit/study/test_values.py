@@ -149,7 +149,7 @@ def test_a_short_study_gets_the_defaults(bench):
             "rule: one_standard_error",
             "rule: best",
             "selection.rule",
-            "'best' is not allowed; smallest_loss, one_standard_error",
+            "'best' is not allowed; supported_gain, one_standard_error",
         ),
         (
             "rule:",
@@ -232,3 +232,40 @@ def test_a_leap_day_is_a_day(bench, valid):
     entry = "{where: {run: 2}, reason: cable, person: lead, date: 2024-02-29}"
     dataset = bench.load(valid, ("columns:", f"exclusions: [{entry}]\n    columns:")).datasets[0]
     assert dataset.exclusions[0].date == "2024-02-29" and dataset.exclusions[0].where == {"run": 2}
+
+
+@pytest.mark.parametrize(
+    ("value", "key", "told"),
+    [
+        ("0.01", "", "0.01 is not allowed; a group of keys such as {expanded: 0.01, coverage_factor: 2}"),
+        ("0.01 bar", "", "such as {expanded: 0.01, coverage_factor: 2}; write the number without unit"),
+        ("{expanded: 0.01 bar, coverage_factor: 2}", ".expanded", "a number above 0; write the number without unit"),
+        ('{expanded: "0.01", coverage_factor: 2}', ".expanded", "a number above 0; write the number without quotes"),
+    ],
+)
+def test_a_target_written_in_another_way_shows_how_it_is_written(bench, valid, value, key, told):
+    _, found, message = bench.only(valid, ("rule:", f"target_uncertainty: {value}\n  rule:"))
+    assert found == f"selection.target_uncertainty{key}" and message.endswith(told)
+
+
+@pytest.mark.parametrize("value", ["a lot", "m", "2026-04-03", "0..6", "1/2"])
+def test_a_text_without_a_number_gets_no_hint_about_units(bench, valid, value):
+    _, _, message = bench.only(valid, ("    columns:", f"    level_tolerance: {value}\n    columns:"))
+    assert message.endswith("0 or a number above 0")
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "example"),
+    [
+        ("{quantity: flow, unit: L/min}", "flow", "{quantity: water level, unit: m}"),
+        ("{family: polynomial, degree: 1..3}", "polynomial", "{family: polynomial, degree: 1..3}"),
+        (
+            "{stimulus: flow, response: hertz}",
+            "[flow, hertz]",
+            "{stimulus: level_m, response: current_mA, series: run}",
+        ),
+    ],
+)
+def test_where_a_group_of_keys_is_needed_one_is_shown(bench, valid, old, new, example):
+    told = [problem.message for problem in bench.problems(valid, (old, new))]
+    assert any(message.endswith(f"a group of keys such as {example}") for message in told)
