@@ -40,6 +40,8 @@ ALPHA = 0.05
 HIGHEST_DEGREE, LEAST_SPARE = 6, 3
 #: A candidate is adequate when it misses the noise-free curve by less than this share of a level mean's noise.
 ADEQUATE = 0.3
+#: Aims for the default rule, averaged over adequate scenarios.
+AIMED_HIGH, AIMED_MEDIAN = 1.85, 1.08
 GRID = np.linspace(0.0, 1.0, 201)
 BAND_GRID = GRID[::5]
 
@@ -67,35 +69,39 @@ The same command writes the same text, on one process or more.
 
 ## What was simulated
 
-- {scenarios} scenarios: 7 curves (straight, quadratic, cubic, saturating, square root, S, local bump) at 9, 12, 20 or 40
-  equidistant levels in 1, 2 or 3 series, one reading for each level and series; repeatability 0.1 %, 1 % or 5 % of the
-  span; at 0.1 % and 1 % without and with a deviation of each level, three times the repeatability and shared by all
-  series. {studies} studies of each; stream (seed {seed}, number of the scenario, number of the study).
+- {scenarios} scenarios: 7 curves (straight, quadratic, cubic, saturating, square root, S, local bump) at 9, 12, 20 or
+  40 equidistant levels in 1, 2 or 3 series, one reading for each level and series; repeatability 0.1 %, 1 % or 5 % of
+  the span; at 0.1 % and 1 % without and with a deviation of each level, three times the repeatability and shared by
+  all series. {studies} studies of each; streams from (seed {seed}, number of the scenario, number of the study).
 - Candidates: polynomials of degree 0 to 6 with levels less parameters of 3 or more; direct evaluation, no monotone
-  requirement. Rules work on leave-one-level-out losses or on level means as in a real study, alpha 0.05. For comparison
-  only: `rows_...` leave out single rows, or count every row as independent; `paired_one_standard_error` takes the
-  simplest candidate within one paired standard error of the smallest loss.
+  requirement. Rules work on leave-one-level-out losses or on level means as in a real study, alpha {alpha}. For
+  comparison only: `rows_...` leave out single rows, or count every row as independent; `paired_one_standard_error`
+  takes the simplest candidate within one paired standard error of the smallest loss.
 - Every second scenario of the list belongs to half B, the others to half A; neighbours in the list differ in shape, so
   that every setting and every pair of settings is in both halves. Half A: {all_A} scenarios, half B: {all_B}.
 - Some candidate is *adequate* in a scenario when its fit to the noise-free curve misses that curve by less than
   {share} of the standard deviation of a level mean (root mean square over the interval; level deviation included): in
   {good_A} scenarios of half A and {good_B} of half B. In the others every candidate is wrong in form.
 
-*Regret* is the root-mean-square error over the interval of the curve that a rule takes, divided by that of the candidate
-that is best in hindsight in the same study: 1 is perfect. Median and 95th percentile over the studies of a scenario are
-averaged over the scenarios; *worst* is the largest of all studies. *Beyond the default* is the difference of the 95th
-percentiles from that of the default rule `{default}`, with its standard error over the scenarios. The last column is
-the share of studies in which a rule takes a higher degree than the best in hindsight.
+*Regret* is the root-mean-square error over the interval of the curve that a rule takes, divided by that of the
+candidate that is best in hindsight in the same study: 1 is the least. Median and 95th percentile over the studies of a
+scenario are averaged over the scenarios; *worst* is the largest of all studies. *Beyond the default* is the difference
+of the 95th percentiles from that of the default rule `{default}`, with its standard error over the scenarios. The last
+column is the share of studies in which a rule takes a higher degree than the best in hindsight.
 
 ## What was tuned where
 
 The three numbers of `{default}` (least standard errors {least}, alpha {alpha}, weight of an end level {end};
-`fitlib/numerics/gains.py`) were set on half A of an earlier list with the same curves and other seeds. The form of the
-rule was found by looking at that whole list. Half B as quoted here has its own seeds and its own combinations of levels
-and series, and nothing was adjusted to it; but its curves are of the same seven kinds, so that it says nothing about
-others. The last table shows how little the numbers matter on half A as simulated here.
+`fitlib/numerics/gains.py`) were set on half A of an earlier list of the same curves with other seeds. The form of the
+rule was found by looking at that whole list. Half B as quoted here has its own seeds and,
+in part, its own numbers of levels and series, and nothing was adjusted to it; but its curves are of the same seven
+kinds: it says nothing about others. The
+last table gives half A as simulated here. There a smaller alpha lowers the 95th percentile and raises the median; the
+numbers in use are a compromise between the two aims, not the best for either.
 
 ## Aims for the default rule (half B, some candidate adequate)
+
+In brackets the standard deviation that the number of studies leaves (200 resamples of the studies of each scenario).
 
 {aims}
 
@@ -109,14 +115,16 @@ others. The last table shows how little the numbers matter on half A as simulate
 
 ## What the default rule says of itself (half B, {band_studies} studies of each scenario)
 
-Through the steps of the analysis. The outer error is the root of the mean outer-loop loss over the studies of a
+Through the steps of the analysis. The stated outer error is the root of the mean outer-loop loss over the studies of a
 scenario; it is compared with the error that the chosen curves make for a new observation at the same levels (squared
-error of the curve, level deviation and repeatability). The mean over the scenarios is followed by the least and the
-largest; with {band_studies} studies the latter are as much chance as fault: one scenario of 9 levels scatters by about
-{chance:.0f} %. Leaving out an end level extrapolates, which the function in use never does: over all levels the outer
-error is on the safe side by construction, and the more so, the worse the candidates are. Coverage is the share of the
-interval where the pointwise nominal 95 % confidence band of the chosen candidate holds the known curve, averaged over
-studies. The band takes the chosen candidate as given: selection, and a misfit that the data do not show, cost coverage.
+error of the curve, level deviation and repeatability). Mean of the difference over the scenarios, then the least and
+the largest; with {band_studies} studies a scenario of 9 levels scatters by {chance:.0f} % by chance alone. Leaving out
+an end level extrapolates, and leaving out an interior one widens a gap, neither of which the function in use does:
+the stated error is mostly too large, and most where few levels meet a curve that the candidates follow badly.
+
+Coverage is the share of the interval where the pointwise nominal 95 % confidence band of the chosen candidate holds the
+known curve, averaged over studies. The band takes the chosen candidate as given: selection, and a misfit that the data
+do not show, cost coverage, so that 95 % is not reached.
 
 {steps}
 
@@ -424,9 +432,18 @@ def tuning_table(outcomes: list[Outcome]) -> str:
         high = float(np.mean([np.percentile(values, 95) for values in regrets]))
         middle = float(np.mean([np.median(values) for values in regrets]))
         mark = " (in use)" if numbers == (gains.LEAST_STANDARD_ERRORS, ALPHA, gains.END_WEIGHT) else ""
-        rows.append((f"{numbers[0]}{mark}", f"{numbers[1]}", f"{numbers[2]}", f"{middle:.3f}", f"{high:.3f}"))
-    heading = ("standard errors", "alpha", "end weight", "median", "95th percentile")
-    return _table(heading, sorted(rows, key=lambda row: (row[-1], row)))
+        both = "yes" if high <= AIMED_HIGH and middle <= AIMED_MEDIAN else "no"
+        rows.append((f"{numbers[0]}{mark}", f"{numbers[1]}", f"{numbers[2]}", f"{middle:.3f}", f"{high:.3f}", both))
+    heading = ("standard errors", "alpha", "end weight", "median", "95th percentile", "meets both aims")
+    return _table(heading, sorted(rows, key=lambda row: (row[4], row)))
+
+
+def _scatter(outcomes: list[Outcome], percent: float) -> float:
+    """Standard deviation of a mean percentile of the default rule's regret, by resampling studies."""
+    rng = np.random.default_rng(SEED)
+    regrets = np.stack([outcome.regret[DEFAULT] for outcome in outcomes])
+    drawn = [rng.choice(values, (200, values.size)) for values in regrets]
+    return float(np.std(np.mean([np.percentile(draws, percent, axis=1) for draws in drawn], axis=0), ddof=1))
 
 
 def aims(outcomes: list[Outcome]) -> str:
@@ -434,9 +451,10 @@ def aims(outcomes: list[Outcome]) -> str:
     found = figures_of(outcomes, DEFAULT)
     others = {rule: figures_of(outcomes, rule).high for rule in (*RULES, *ALTERNATIVES) if rule != DEFAULT}
     best = min(others, key=others.get)
+    middle, high = _scatter(outcomes, 50), _scatter(outcomes, 95)
     lines = [
-        (f"95th percentile 1.85 or less: {found.high:.2f}", found.high <= 1.85),
-        (f"median 1.08 or less: {found.median:.3f}", found.median <= 1.08),
+        (f"95th percentile {AIMED_HIGH} or less: {found.high:.3f} ({high:.3f})", found.high <= AIMED_HIGH),
+        (f"median {AIMED_MEDIAN} or less: {found.median:.4f} ({middle:.4f})", found.median <= AIMED_MEDIAN),
         (
             f"95th percentile smaller than that of every other rule: {found.high:.2f}, the best other one is "
             f"`{best}` with {others[best]:.2f}",

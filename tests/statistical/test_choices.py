@@ -1,7 +1,7 @@
 """The rules against each other on a small part of the simulation bench, and the verdict on 100 seeded studies.
 
-The bench is choices.py; its full tables are in choices.md. Here: every sixth of the scenarios of half B in which some
-candidate is adequate, 40 studies each.
+The bench is choices.py; its full tables are in choices.md. Here: all scenarios of half B in which some candidate is
+adequate, with a fifth of the studies.
 """
 
 import importlib.util
@@ -11,8 +11,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-STUDIES = 40
-EVERY = 6
+STUDIES = 20
 #: Least distance between the 95th percentiles of the regret.
 MARGIN = 0.1
 OTHERS = ("smallest_loss", "bic", "f_test", "rows_smallest_loss")
@@ -34,7 +33,7 @@ def bench():
 def outcomes(bench):
     half = [scenario for scenario in bench.scenarios() if scenario.half == "B"]
     adequate = [item for item in half if bench.best_misfit(item) < bench.ADEQUATE * item.level_noise]
-    return [bench.simulate(scenario, STUDIES) for scenario in adequate[::EVERY]]
+    return [bench.simulate(scenario, STUDIES) for scenario in adequate]
 
 
 @pytest.fixture(scope="module")
@@ -49,11 +48,14 @@ def test_the_default_rule_seldom_goes_far_wrong(high, other):
     assert high["supported_gain"] < high[other] - MARGIN
 
 
-@pytest.mark.parametrize("other", OTHERS)
-def test_no_other_rule_would_pass_in_its_place(high, other):
-    """The twin: the comparison tells rules apart."""
-    rivals = [high[rule] for rule in (*OTHERS, "supported_gain") if rule != other]
-    assert not high[other] < min(rivals) - MARGIN
+def test_without_its_two_looks_the_rule_would_not_pass(bench, outcomes, monkeypatch):
+    """The twin, on a quarter of the scenarios: any smaller loss is preferred, whatever its support."""
+    part = outcomes[::4]
+    monkeypatch.setattr(bench.gains, "LEAST_STANDARD_ERRORS", 0.0)
+    monkeypatch.setattr(bench, "ALPHA", 1.1)  # every p is below it
+    loose = [bench.simulate(outcome.scenario, STUDIES) for outcome in part]
+    others = [bench.high_regrets(part, other).mean() for other in OTHERS]
+    assert not bench.high_regrets(loose, "supported_gain").mean() < min(others) - MARGIN
 
 
 def test_both_halves_share_every_pair_of_settings(bench):

@@ -1,7 +1,7 @@
 """Noise around a straight line: the loss of the winner is optimistic, the error of the outer loop is not.
 
-200 studies of 11 levels, one reading each, without level deviations (test_coverage.py has the same for three series with
-them, under another rule). The winner's loss is optimistic because the minimum was sought (Stone, J. R. Stat. Soc. B 36
+200 studies of 11 levels, one reading each, without level deviations (test_coverage.py looks at three series with them,
+under another rule). The winner's loss is optimistic because the minimum was sought (Stone, J. R. Stat. Soc. B 36
 (1974) 111; Varma & Simon, BMC Bioinformatics 7 (2006) 91).
 """
 
