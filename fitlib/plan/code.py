@@ -180,5 +180,5 @@ def _read_cache(cache: Path | None) -> dict[str, str]:
     try:
         content = json.loads(cache.read_bytes())
         return dict(content["trees"]) if content["by"] == _own_hash() else {}
-    except (OSError, ValueError, KeyError, TypeError):
+    except (OSError, ValueError, KeyError, TypeError, RecursionError):
         return {}

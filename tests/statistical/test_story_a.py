@@ -23,10 +23,11 @@ def _degree(candidate: str | None) -> int:
     return 0 if candidate is None else int(candidate.split("-")[1])
 
 
-@pytest.fixture(scope="module")
-def outcomes(made, data):
-    """Results of the real steps under the default rule, without the outer loop's results being read."""
-    study = made.study((made.family(DEGREES),), validation=("leave_one_level_out", "leave_one_series_out"))
+@pytest.fixture(scope="module", params=["supported_gain", "one_standard_error"])
+def outcomes(made, data, request):
+    """Results of the real steps under the default rule and the classical one, without reading the outer loop."""
+    schemes = ("leave_one_level_out", "leave_one_series_out")
+    study = made.study((made.family(DEGREES),), validation=schemes, rule=request.param)
     return [made.run_steps(study, made.observations(*rows)) for rows in data]
 
 

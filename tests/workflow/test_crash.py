@@ -1,6 +1,8 @@
 """Stopped, killed and doubled runs: nothing is half written, and the same command goes on."""
 
+import json
 import os
+import shutil
 import signal
 import subprocess
 import time
@@ -140,6 +142,31 @@ def test_a_damaged_batch_output_and_store_are_made_again(bench):
     summary = bench.run()
     assert (summary.revision, summary.new) == ("rev-0001", False)
     assert summary.computed == 18
+    assert bench.contents("rev-0001") == before
+
+
+def test_whatever_stands_in_the_working_folder_nobody_is_asked(bench):
+    """Folders in place of files, files in place of folders, not a number, brackets without end."""
+    bench.run()
+    before = bench.contents("rev-0001")
+    (marker,) = bench.work.published.glob("*.json")
+    content = json.loads(marker.read_text())
+    marker.write_text(json.dumps({**content, "rows": content["rows"][:1]}))
+    first, second = sorted(bench.work.batches.glob("*.json"))
+    first.write_text(first.read_text().replace("{", '{"more": NaN,', 1))
+    second.unlink()
+    (second / "inner").mkdir(parents=True)
+    (plan,) = (bench.work.root / "plans").glob("*.json")
+    plan.unlink()
+    plan.mkdir()
+    bench.work.latest_plan.write_text("[" * 100_000)
+    bench.work.trees.unlink()
+    bench.work.trees.mkdir()
+    shutil.rmtree(bench.work.logs)
+    bench.work.logs.write_text("")
+    summary = bench.run()
+    assert (summary.revision, summary.new, summary.kept) == ("rev-0001", False, 18)
+    assert [row.dataset for row in summary.rows] == ["cell-1", "cell-2", "cell-3"]
     assert bench.contents("rev-0001") == before
 
 

@@ -89,6 +89,22 @@ def test_names_that_mean_something_to_shells_and_html_do_no_harm(tmp_path, bench
     assert f"inputs/{file}" in nasty.contents("rev-0001")
 
 
+def test_names_that_are_not_utf8_and_a_plain_locale_do_no_harm(tmp_path, bench):
+    folder = tmp_path / os.fsdecode(b"by\xff te")
+    try:
+        shutil.copytree(bench.root, folder)
+    except OSError:
+        pytest.skip("file names are text here")
+    results = tmp_path / os.fsdecode("résultats".encode())
+    environment = {**os.environ, "LC_ALL": "C", "PYTHONUTF8": "0", "PYTHONCOERCECLOCALE": "0"}
+    command = [sys.executable, "-m", "fitlib", "run", "study.yaml", "--results", results, "--batches", "1"]
+    for status, told in ((0, "rev-0001 was published"), (0, "nothing has changed since")):
+        done = subprocess.run(command, cwd=folder, env=environment, capture_output=True, timeout=120)
+        assert done.returncode == status, done.stderr
+        assert told in done.stdout.decode(errors="replace")
+    assert verify_revision(results / "trial" / "rev-0001") == []
+
+
 def test_the_workflow_runs_from_an_installed_package(bench, tmp_path):
     """A copy in the layout of a wheel, found before any other, and started away from the repository."""
     site = tmp_path / "site"

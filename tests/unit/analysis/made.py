@@ -6,6 +6,7 @@ from pathlib import Path
 import numpy as np
 
 from fitlib.analysis import assemble, run_step, step_names
+from fitlib.numerics.selection import LOSS_RULES
 from fitlib.observations.records import FileAccount, Observations
 from fitlib.study.settings import (
     Columns,
@@ -72,7 +73,7 @@ def study(
         weighting=weighting,
         validation=schemes,
         selection=SelectionSettings(
-            loss=loss if rule in ("one_standard_error", "smallest_loss") else None,
+            loss=loss if rule in LOSS_RULES else None,
             rule=rule,
             monotone=monotone,
             degrees_of_freedom=degrees_of_freedom,

@@ -302,3 +302,18 @@ def test_levels_not_drawn_count_for_nothing(rule):
     again = _with_idle_levels(many, -7.0)
     every = np.ones(5, dtype=bool)
     assert np.array_equal(take_many(again, rule, every), take_many(many, rule, every))
+
+
+def test_a_candidate_beyond_the_limit_is_no_tie_however_uncertain_the_difference_is():
+    """The threshold of the smallest loss is 1 + 0.1155 / 2; the third has as many parameters as the chosen one."""
+
+    def choice(third):
+        losses = [[1.05] * 4, [0.9, 1.1, 0.9, 1.1], third]
+        return choose(_evidence(losses, parameters=[1, 2, 1]), "one_standard_error", np.ones(3, dtype=bool))
+
+    beyond, within = [0.7, 1.7, 0.7, 1.7], [0.556, 1.556, 0.556, 1.556]  # means 1.2 and 1.056
+    assert choice(beyond).threshold == pytest.approx(1 + np.sqrt(0.04 / 3) / 2, rel=1e-12)
+    for third, tied in ((beyond, ()), (within, (2,))):
+        evidence = _evidence([[1.05] * 4, third])
+        assert paired_standard_error(evidence, 0, 1) > abs(np.mean(third) - 1.05)
+        assert (choice(third).chosen, choice(third).tied) == (0, tied)

@@ -114,7 +114,11 @@ def test_the_cache_gives_the_same_identity_and_a_damaged_one_is_ignored(package,
     append(package / "errors.py", "\nADDED = 1\n")
     assert code_identity(cache).numerics != before.numerics
     assert remember_trees(cache) is not None
-    cache.write_text("{")
+    for text in ("{", "null", "[]", "{}", "[" * 100_000):
+        cache.write_text(text)
+        assert code_identity(cache) == code_identity()
+    cache.unlink()
+    cache.mkdir()
     assert code_identity(cache) == code_identity()
 
 
