@@ -62,13 +62,17 @@ def square_root(value: Fraction) -> float:
     Returns
     -------
     float
+        inf beyond the range of doubles.
     """
     if value <= 0:
         return 0.0
     # 2^(2s) n/d with at least 128 bits before the root leaves 64 correct bits after it
     shift = max(0, (128 - value.numerator.bit_length() + value.denominator.bit_length() + 1) // 2)
     root = math.isqrt((value.numerator << 2 * shift) // value.denominator)
-    return float(Fraction(root, 1 << shift))
+    try:
+        return float(Fraction(root, 1 << shift))
+    except OverflowError:
+        return math.inf
 
 
 def exact_fits(

@@ -317,3 +317,8 @@ def test_square_roots_of_ratios_of_very_long_numbers(above, below):
 def test_square_roots_of_squares(root):
     assert square_root(root**2) == float(root)
     assert square_root(-(root**2)) == 0.0
+
+
+def test_a_root_beyond_the_range_of_doubles_is_infinite():
+    assert square_root(Fraction(10) ** 700) == float("inf")
+    assert square_root(Fraction(10) ** 600) == 1e300
