@@ -97,8 +97,8 @@ def _short_form(result: dict) -> str:
         return ""
     terms = ", ".join(f"c{power} = {word}" for power, word in enumerate(form["coefficients"]))
     return (
-        f"Where fewer digits have to do, {form['digits']} are enough: with {terms} no converted value moves by more than "
-        "1/20 of its standard uncertainty. With fewer digits it would."
+        f"Where fewer digits have to do, {form['digits']} are enough: with {terms} no converted value moves by more "
+        "than 1/20 of its standard uncertainty. With fewer digits it would."
     )
 
 
