@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import csv
+import functools
 import io
 import math
 import re
 import unicodedata
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from numbers import Real
 
@@ -66,12 +67,33 @@ class Table:
         writer = csv.writer(out, lineterminator="\n")
         names = [column.name for column in self.columns]
         writer.writerow(names)
-        for row in self.rows:
-            unknown = set(row).difference(names)
-            if unknown:
-                raise ValueError(f"{self.name}: no column is declared for {', '.join(sorted(unknown))}")
-            writer.writerow([self._cell(column, row.get(column.name)) for column in self.columns])
+        writer.writerows(map(self._line, self._checked_rows(frozenset(names))))
         return out.getvalue()
+
+    def _checked_rows(self, known: frozenset[str]) -> Iterator[Mapping[str, object]]:
+        seen: set[tuple[str, ...]] = set()
+        for row in self.rows:
+            shape = tuple(row)
+            if shape not in seen:
+                unknown = sorted(set(shape).difference(known))
+                if unknown:
+                    raise ValueError(f"{self.name}: no column is declared for {', '.join(unknown)}")
+                seen.add(shape)
+            yield row
+
+    def _line(self, row: Mapping[str, object]) -> list[str]:
+        line = []
+        for column in self.columns:
+            value = row.get(column.name)
+            if value is None:
+                line.append("")
+            elif type(value) is str and column.type == "text":
+                line.append(_safe_text(value))
+            elif type(value) is float and column.type == "number" and math.isfinite(value):
+                line.append(repr(value))
+            else:
+                line.append(self._cell(column, value))
+        return line
 
     def _cell(self, column: Column, value: object) -> str:
         try:
@@ -131,7 +153,12 @@ def safe_text(text: str) -> str:
         With a leading ``'`` where the text starts with ``= + - @``, tab or return; control characters, line separators
         and marks that reorder text are written as ``\u001b``.
     """
-    guarded = f"'{text}" if _FORMULA.match(_checked(text, str)) else text
+    return _safe_text(_checked(text, str))
+
+
+@functools.lru_cache(maxsize=1 << 16)
+def _safe_text(text: str) -> str:
+    guarded = f"'{text}" if _FORMULA.match(text) else text
     if guarded.isascii() and guarded.isprintable():
         return guarded
     return "".join(f"\\u{ord(char):04x}" if _harmful(char) else char for char in guarded)

@@ -6,7 +6,7 @@ from collections import Counter
 from dataclasses import dataclass, field
 from typing import Any
 
-from fitlib.engine.store import Store
+from fitlib.engine.store import Store, content_digest
 from fitlib.plan import DatasetPlan, Plan, digest
 
 
@@ -99,7 +99,7 @@ def dataset_figures(result: dict[str, Any], plan: Plan, store: Store, account: A
         SVG text by the figure's name.
     """
     drawn_by = {"code": plan.code["drawing"], "versions": dict(plan.versions)}
-    key = Store.key("figures", digest({"result": result, "drawn by": drawn_by}))
+    key = Store.key("figures", digest({"result": content_digest(result), "drawn by": drawn_by}))
     figures = store.get(key)
     if figures is None:
         from fitlib.figures import draw_dataset

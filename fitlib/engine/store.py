@@ -38,11 +38,10 @@ class Store:
     def get(self, key: str) -> Any | None:
         """Return the value of an entry; None when it is missing or damaged."""
         try:
-            entry = json.loads(self.path(key).read_bytes())
-            sound = entry["key"] == key and entry["sha256"] == _sum(key, entry["value"])
-        except (OSError, ValueError, KeyError, TypeError, RecursionError):
+            text = _value_text(self.path(key).read_text(encoding="ascii"), key)
+            return None if text is None else json.loads(text)
+        except (OSError, ValueError, RecursionError):
             return None
-        return entry["value"] if sound else None
 
     def put(self, key: str, value: Any) -> Any:
         """Write an entry and return its value as a reader will find it.
@@ -65,19 +64,42 @@ class Store:
         OSError
             The entry cannot be written.
         """
-        stored = json.loads(canonical(value))
-        write_atomic(self.path(key), _text({"key": key, "sha256": _sum(key, stored), "value": stored}) + "\n")
-        return stored
+        text = canonical(value)
+        write_atomic(self.path(key), _head(key, text) + text + _TAIL)
+        return json.loads(text)
 
     def has(self, key: str) -> bool:
         """Return whether a sound entry is there."""
         return self.get(key) is not None
 
 
-def _sum(key: str, value: Any) -> str:
-    return hashlib.sha256(f"{key}\n{_text(value)}".encode("ascii")).hexdigest()
+def content_digest(stored: Any) -> str:
+    """Return the SHA-256 of a value that came out of the store, and so needs no check before it is written.
+
+    Parameters
+    ----------
+    stored : JSON-able
+
+    Returns
+    -------
+    str
+    """
+    # Its keys are sorted already: entries are written in canonical form and read in that order
+    text = json.dumps(stored, separators=(",", ":"), allow_nan=False)
+    return hashlib.sha256(text.encode("ascii")).hexdigest()
 
 
-def _text(value: Any) -> str:
-    """As ``canonical``, for what came out of JSON and needs no more checks."""
-    return json.dumps(value, sort_keys=True, separators=(",", ":"), allow_nan=False)
+_TAIL = "}\n"
+
+
+def _head(key: str, text: str) -> str:
+    """What stands before the value; the sum is taken of its text, so that reading need not write it again."""
+    total = hashlib.sha256(f"{key}\n{text}".encode("ascii")).hexdigest()
+    return f'{{"key":"{key}","sha256":"{total}","value":'
+
+
+def _value_text(entry: str, key: str) -> str | None:
+    """The text of the value; None when the entry is not as it was written."""
+    length = len(_head(key, ""))
+    text = entry[length : -len(_TAIL)]
+    return text if entry == _head(key, text) + text + _TAIL else None

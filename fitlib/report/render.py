@@ -9,6 +9,7 @@ from jinja2 import Environment, FileSystemLoader, StrictUndefined
 from fitlib.report.dataset import dataset_part
 from fitlib.report.front import front_part
 from fitlib.report.prose import prose
+from fitlib.report.table_row import row_html, small_html
 
 _TEMPLATES = Path(__file__).parent / "templates"
 
@@ -46,6 +47,7 @@ def render_report(bundle: dict, figures: dict[str, dict[str, str]], revision: st
         keep_trailing_newline=True,
     )
     environment.filters["prose"] = prose
+    environment.globals |= {"row_html": row_html, "small_html": small_html}
     parts = [
         dataset_part(result, figures.get(result["file_name"]) or {}, number)
         for number, result in enumerate(bundle["results"], start=1)

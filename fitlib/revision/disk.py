@@ -76,7 +76,7 @@ def digest_of(path: Path) -> tuple[str, int]:
 
 
 def write_new(folder: Path, relative: str, data: bytes) -> None:
-    """Write a file that is not there yet, through to the disk, and take away the right to write.
+    """Write a file that is not there yet and take away the right to write; ``sync_tree`` brings it to the disk.
 
     Raises
     ------
@@ -119,14 +119,27 @@ def _write(folder: Path, relative: str, pieces: Iterator[bytes]) -> None:
     with os.fdopen(descriptor, "wb") as file:
         for piece in pieces:
             file.write(piece)
-        file.flush()
-        os.fsync(descriptor)
     with suppress(OSError):  # some shares know no rights; the digests still tell what was altered
         os.chmod(path, stat.S_IMODE(os.stat(path).st_mode) & ~0o222)
 
 
-def sync_folders(folder: Path) -> None:
-    """Bring the entries of a folder and of all folders in it to the disk."""
+def sync_tree(folder: Path) -> None:
+    """Bring every file and folder below a folder to the disk.
+
+    All at once at the end, since then the first call carries most of the work of the others.
+
+    Raises
+    ------
+    OSError
+        If the content of a file cannot be brought to the disk.
+    """
+    for relative, entry in walk(folder):
+        if entry.is_file(follow_symlinks=False):
+            descriptor = os.open(folder / relative, os.O_RDONLY | _NOFOLLOW | _BINARY)
+            try:
+                os.fsync(descriptor)
+            finally:
+                os.close(descriptor)
     for inner in [folder, *(entry for entry in folder.rglob("*") if entry.is_dir())]:
         sync_folder(inner)
 

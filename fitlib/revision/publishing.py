@@ -13,7 +13,7 @@ from pathlib import Path
 from fitlib.errors import FitlibError
 from fitlib.revision.changes import History, changes_text
 from fitlib.revision.compare import compare_revisions
-from fitlib.revision.disk import copy_new, digest_of, dump_json, sha256, sync_folder, sync_folders, write_new
+from fitlib.revision.disk import copy_new, digest_of, dump_json, sha256, sync_folder, sync_tree, write_new
 from fitlib.revision.ledger import differs_from_ledger, next_number, numbers_in, read_ledger, write_ledger
 from fitlib.revision.manifest import (
     HISTORY_FILES,
@@ -254,7 +254,7 @@ class _Staged:
         missing = [revision_name(item) for item in sorted(set(ledger) - present)]
         history = self._history(manifest, name, latest, missing)
         text = self._write_history(manifest, name, history, latest, run_facts)
-        sync_folders(self.path)
+        sync_tree(self.path)
         os.rename(self.path, folder / name)
         sync_folder(folder)
         with suppress(OSError):  # published all the same; the next publication puts it right
