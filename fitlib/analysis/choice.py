@@ -13,7 +13,8 @@ from fitlib.analysis.schemes import FEWEST_FOLDS_TO_DECIDE, evaluate_scheme, mak
 from fitlib.analysis.streams import draw_counts
 from fitlib.analysis.words import amount, listed
 from fitlib.numerics.bootstrap import RESIDUALS_AT_ONCE
-from fitlib.numerics.selection import FIT_RULES, LOSS_RULES, Choice, Evidence, ManyEvidence, choose, take, take_many
+from fitlib.numerics.evidence import Evidence, ManyEvidence
+from fitlib.numerics.selection import FIT_RULES, LOSS_RULES, Choice, choose, take, take_many
 from fitlib.numerics.validation import Fold, level_means, summarise, unit_folds, weighted_mean
 
 #: With more levels than this, outer folds and folds within resamples are interleaved groups of levels.

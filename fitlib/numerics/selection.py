@@ -8,6 +8,7 @@ import numpy as np
 from scipy import stats
 
 from fitlib.numerics.diagnostics import information_criteria
+from fitlib.numerics.evidence import Evidence, ManyEvidence
 from fitlib.numerics.gains import LEAST_STANDARD_ERRORS, Gain, damped_weights, gain, simplest_unbeaten
 from fitlib.numerics.validation import standard_error
 
@@ -18,51 +19,6 @@ LOSS_RULES = ("supported_gain", "one_standard_error", "smallest_loss")
 LEVEL_RULES = ("f_test", "aicc", "bic")
 #: Rules that look at the fits to the level means.
 FIT_RULES = (*LEVEL_RULES, "supported_gain")
-
-
-@dataclass(frozen=True)
-class Evidence:
-    """What a rule may look at, for all members side by side.
-
-    Attributes
-    ----------
-    parameters : ndarray of shape (m,), int
-    level_losses : ndarray of shape (m, L)
-        Of the deciding scheme; nan where it failed.
-    level_weights : ndarray of shape (L,)
-    level_squares : ndarray of shape (m,)
-        Weighted sum of squares of the level means about each fit.
-    floor : float
-        Losses below it count as equal.
-    """
-
-    parameters: np.ndarray
-    level_losses: np.ndarray
-    level_weights: np.ndarray
-    level_squares: np.ndarray
-    floor: float = 0.0
-
-
-@dataclass(frozen=True)
-class ManyEvidence:
-    """Evidence of many resamples.
-
-    Attributes
-    ----------
-    parameters : ndarray of shape (m,), int
-    level_losses : ndarray of shape (m, L, draws)
-        nan where a draw does not judge a candidate, anything finite at a level that was not drawn.
-    level_weights : ndarray of shape (L, draws)
-        0 for a level that was not drawn.
-    level_squares : ndarray of shape (m, draws)
-    floor : float
-    """
-
-    parameters: np.ndarray
-    level_losses: np.ndarray
-    level_weights: np.ndarray
-    level_squares: np.ndarray
-    floor: float = 0.0
 
 
 @dataclass(frozen=True)

@@ -7,7 +7,8 @@ from statsmodels.stats.outliers_influence import OLSInfluence
 
 from fitlib.numerics.components import level_residuals
 from fitlib.numerics.diagnostics import information_criteria, studentized_residuals
-from fitlib.numerics.selection import Evidence, choose
+from fitlib.numerics.evidence import Evidence
+from fitlib.numerics.selection import choose
 from fitlib.numerics.validation import standard_error
 from fitlib.numerics.weighting import root_weights
 

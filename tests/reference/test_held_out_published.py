@@ -7,9 +7,10 @@ import pytest
 import statsmodels.api as sm
 from statsmodels.stats.outliers_influence import OLSInfluence
 
+from fitlib.numerics.evidence import Evidence
 from fitlib.numerics.families import make_family
 from fitlib.numerics.least_squares import LinearProblem
-from fitlib.numerics.selection import Evidence, choose
+from fitlib.numerics.selection import choose
 from fitlib.numerics.validation import level_means, scheme_errors, summarise, unit_folds
 
 

@@ -8,7 +8,8 @@ from scipy import stats
 from statsmodels.formula.api import ols
 
 from fitlib.numerics.components import lack_of_fit
-from fitlib.numerics.selection import Evidence, choose, f_probability
+from fitlib.numerics.evidence import Evidence
+from fitlib.numerics.selection import choose, f_probability
 
 
 @pytest.fixture(scope="module")

@@ -26,8 +26,9 @@ from fitlib.analysis.fits import make_candidates
 from fitlib.numerics import gains
 from fitlib.numerics.components import level_residuals
 from fitlib.numerics.diagnostics import information_criteria
+from fitlib.numerics.evidence import Evidence, ManyEvidence
 from fitlib.numerics.families import make_family, restore
-from fitlib.numerics.selection import Evidence, ManyEvidence, paired_standard_error, take_many
+from fitlib.numerics.selection import paired_standard_error, take_many
 from fitlib.numerics.uncertainty import confidence_band
 from fitlib.numerics.validation import scheme_errors, summarise, unit_folds
 
