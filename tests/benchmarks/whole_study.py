@@ -103,14 +103,18 @@ def main() -> None:
         write_sensor(folder / "data" / "LS-0000.csv", 99_999)
         changed = run(folder)
         numbers, figures, imports = shares(folder, min(count, 20))
+    start = time.perf_counter()
+    subprocess.run([sys.executable, "-m", "snakemake", "--version"], check=True, stdout=subprocess.DEVNULL)
+    engine = time.perf_counter() - start
     offered = CORES * first
-    parts = {"numbers": numbers * count, "figures": figures * count, "imports of 16 jobs": imports * 16}
+    parts = {"numbers": numbers * count, "figures": figures * count}
+    parts |= {"imports of 16 jobs": imports * 16, "start of Snakemake": engine}
     print(f"{count} datasets of 33 observations, degrees 0 to 8, five schemes, {CORES} cores")
     print(f"  first run {first:6.1f} s   no change {again:5.2f} s   one changed file {changed:5.1f} s")
     for part, value in parts.items():
         print(f"  {part:<20} {value:6.1f} s of processor time, {value / offered:4.0%} of what {CORES} cores offer")
     rest = offered - sum(parts.values())
-    print(f"  {'the rest':<20} {rest:6.1f} s, {rest / offered:4.0%}: Snakemake, publishing, waiting")
+    print(f"  {'the rest':<20} {rest:6.1f} s, {rest / offered:4.0%}: scheduling, publishing, waiting")
 
 
 if __name__ == "__main__":
