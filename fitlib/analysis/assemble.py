@@ -104,7 +104,7 @@ def _settings(study, dataset, data: DatasetArrays) -> dict:
         "rule": selection.rule,
         "loss": selection.loss,
         "alpha": selection.alpha,
-        "monotone": bool(selection.monotone or dataset.evaluation == "inverse"),
+        "monotone": bool(study.requires_monotone(dataset)),
         "degrees_of_freedom": selection.degrees_of_freedom,
         "target": None if target is None else {"expanded": target.expanded, "coverage_factor": target.coverage_factor},
     }

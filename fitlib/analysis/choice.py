@@ -15,7 +15,7 @@ from fitlib.analysis.words import amount, listed
 from fitlib.numerics.bootstrap import RESIDUALS_AT_ONCE
 from fitlib.numerics.evidence import Evidence, ManyEvidence
 from fitlib.numerics.selection import FIT_RULES, LOSS_RULES, Choice, choose, take, take_many
-from fitlib.numerics.validation import Fold, level_means, summarise, unit_folds, weighted_mean
+from fitlib.numerics.validation import Fold, level_means, summarise, unit_folds
 
 #: With more levels than this, outer folds and folds within resamples are interleaved groups of levels.
 MOST_LEVEL_FOLDS = 60
@@ -79,15 +79,11 @@ def _obstacles(record: dict, deciding: dict | None, study, dataset) -> list[str]
     need = study.selection.degrees_of_freedom
     if record["level_degrees_of_freedom"] < need:
         found.append(f"levels less parameters is {record['level_degrees_of_freedom']}; {need} is required")
-    if _must_be_monotone(study, dataset) and not record["monotone"]:
+    if study.requires_monotone(dataset) and not record["monotone"]:
         found.append(_not_monotone(record, dataset, study))
     if deciding is not None and deciding["status"] == "evaluated":
         found += _failed_folds(record["candidate"], deciding)
     return found
-
-
-def _must_be_monotone(study, dataset) -> bool:
-    return study.selection.monotone or dataset.evaluation == "inverse"
 
 
 def _not_monotone(record: dict, dataset, study) -> str:
@@ -297,8 +293,3 @@ def interior_choice(evidence: Evidence, rule: Rule, eligible: np.ndarray) -> int
 def make_choice(evidence: Evidence, rule: Rule, eligible: np.ndarray) -> Choice:
     """Apply the rule to all used observations."""
     return choose(evidence, rule.name, eligible, rule.alpha)
-
-
-def overall_loss(values: np.ndarray, weights: np.ndarray) -> float | None:
-    """Weighted mean over levels as a plain number."""
-    return number(weighted_mean(np.asarray(values, dtype=float), weights))

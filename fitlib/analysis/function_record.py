@@ -80,7 +80,7 @@ def _short_form(study, dataset, curve, data: DatasetArrays, chosen: dict) -> dic
         return None
     x = np.linspace(*data.x_interval, SHORT_FORM_POINTS)
     covariance = np.array(chosen["covariance"], dtype=float)
-    variance = chosen["observation_variance"] * observation_spread(study, dataset, curve, x, data) ** 2
+    variance = observation_variance(study, dataset, curve, x, data, chosen)
     form = shortest(curve, estimates, x, np.sqrt(mean_standard_uncertainty(curve, covariance, x) ** 2 + variance))
     if form is None:
         return None
@@ -142,8 +142,8 @@ def _clause(record: dict, key: str, before: str, after: str) -> str:
     return f"{before}{record[key]}{after}" if record.get(key) else ""
 
 
-def observation_spread(study, dataset, curve, x: np.ndarray, data: DatasetArrays) -> np.ndarray:
-    """Relative standard deviation of one observation at each abscissa, 1 on average over the observations used.
+def observation_variance(study, dataset, curve, x: np.ndarray, data: DatasetArrays, chosen: dict) -> np.ndarray:
+    """Variance of one new observation about the function at each abscissa.
 
     Parameters
     ----------
@@ -153,11 +153,18 @@ def observation_spread(study, dataset, curve, x: np.ndarray, data: DatasetArrays
     x : ndarray of shape (n,)
         Independent variable of the fit.
     data : DatasetArrays
+    chosen : dict
+        Its record of the step ``fits``.
 
     Returns
     -------
     ndarray of shape (n,)
     """
+    return chosen["observation_variance"] * _observation_spread(study, dataset, curve, x, data) ** 2
+
+
+def _observation_spread(study, dataset, curve, x: np.ndarray, data: DatasetArrays) -> np.ndarray:
+    """Relative standard deviation of one observation at each abscissa, 1 on average over the observations used."""
     stimulus = curve.evaluate(x) if dataset.function == "analysis" else x
     if study.weighting == "none":
         return np.ones_like(x)

@@ -7,7 +7,7 @@ from scipy import stats
 
 from fitlib.analysis.dataset import DatasetArrays
 from fitlib.analysis.evaluated import in_evaluated_unit
-from fitlib.analysis.function_record import observation_spread
+from fitlib.analysis.function_record import observation_variance
 from fitlib.analysis.jsonable import number, numbers
 from fitlib.numerics.families import restore
 from fitlib.numerics.uncertainty import Band, confidence_band, mean_standard_uncertainty, prediction_interval
@@ -63,8 +63,7 @@ def _fitted(chosen: dict):
 
 
 def _observation_variance(chosen: dict, data: DatasetArrays, study, dataset, x: np.ndarray) -> np.ndarray:
-    curve = restore(chosen["scaled"])
-    return chosen["observation_variance"] * observation_spread(study, dataset, curve, x, data) ** 2
+    return observation_variance(study, dataset, restore(chosen["scaled"]), x, data, chosen)
 
 
 def _interval(chosen: dict, data: DatasetArrays, study, dataset, x: np.ndarray) -> Band:

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import json
-
 from fitlib.cli.arguments import add_command
 from fitlib.cli.output import say
 
@@ -22,7 +20,7 @@ def add(commands) -> None:
 
 def execute(arguments) -> int:
     """Print the schema, made from the models that read a study."""
-    from fitlib.study import export_schema
+    from fitlib.study import schema_text
 
-    say(json.dumps(export_schema(), indent=2, ensure_ascii=False))
+    say(schema_text().removesuffix("\n"))
     return 0

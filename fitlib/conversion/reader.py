@@ -86,10 +86,6 @@ def _interval(value) -> str:
     return "" if _pair(value) == "" and value[0] < value[1] else "two numbers, the smaller first"
 
 
-def _different_pair(value) -> str:
-    return "" if _pair(value) == "" and value[0] != value[1] else "two different numbers"
-
-
 def _coefficients(value) -> str:
     return "" if _numbers(value) and value else "a list of numbers"
 

@@ -14,6 +14,8 @@ from dataclasses import dataclass
 from decimal import Decimal
 from fractions import Fraction
 
+from fitlib.numerics.rationals import padded, product, total, value_at
+
 #: Beyond this number of parameters the numbers grow too long to be worth it; floating point then serves.
 MOST_PARAMETERS = 16
 
@@ -100,10 +102,10 @@ def exact_fits(
         Without degrees that the data do not determine or that have too many parameters.
     """
     nodal, interpolant = _through(fixed_points)
-    target = [b - _value(interpolant, a) for a, b in zip(x, y, strict=True)]
-    damped = [w * _value(nodal, a) ** 2 for w, a in zip(weights, x, strict=True)] if fixed_points else list(weights)
+    target = [b - value_at(interpolant, a) for a, b in zip(x, y, strict=True)]
+    damped = [w * value_at(nodal, a) ** 2 for w, a in zip(weights, x, strict=True)] if fixed_points else list(weights)
     # sum w (t - nodal q)^2 = sum (w nodal^2) (t / nodal - q)^2, but without dividing by nodal
-    cross = [w * _value(nodal, a) for w, a in zip(weights, x, strict=True)] if fixed_points else list(weights)
+    cross = [w * value_at(nodal, a) for w, a in zip(weights, x, strict=True)] if fixed_points else list(weights)
     sizes = {order: order + 1 - len(fixed_points) for order in orders}
     wanted = {order: size for order, size in sizes.items() if 1 <= size <= min(MOST_PARAMETERS, len(x))}
     if not wanted:
@@ -196,7 +198,7 @@ def _eliminate(rows: list[list[int]], size: int) -> list[list[Fraction]] | None:
 def _expand(free, inverse, rss: Fraction, mean_weight: Fraction, nodal, interpolant) -> ExactFit:
     """From the free part to the whole polynomial, and from its normal matrix to variance factors at mean weight 1."""
     length = len(free) + len(nodal) - 1
-    coefficients = _add(_times(nodal, free), interpolant, length)
+    coefficients = padded(total(product(nodal, free), interpolant), length)
     # Row m of the map from free to whole coefficients holds nodal[m - j]
     rows = [[nodal[m - j] if 0 <= m - j < len(nodal) else 0 for j in range(len(free))] for m in range(length)]
     factors = [
@@ -209,27 +211,7 @@ def _through(points) -> tuple[list[Fraction], list[Fraction]]:
     """Nodal polynomial of the fixed points, and the polynomial through them (Newton)."""
     nodal, interpolant = [Fraction(1)], [Fraction(0)]
     for a, b in points:
-        factor = (b - _value(interpolant, a)) / _value(nodal, a)
-        interpolant = _add(interpolant, [factor * value for value in nodal], len(nodal))
-        nodal = _times(nodal, [-a, Fraction(1)])
+        factor = (b - value_at(interpolant, a)) / value_at(nodal, a)
+        interpolant = total(interpolant, [factor * value for value in nodal])
+        nodal = product(nodal, [-a, Fraction(1)])
     return nodal, interpolant
-
-
-def _value(coefficients: Sequence[Fraction], x: Fraction) -> Fraction:
-    total = Fraction(0)
-    for value in reversed(coefficients):
-        total = total * x + value
-    return total
-
-
-def _times(a: Sequence[Fraction], b: Sequence[Fraction]) -> list[Fraction]:
-    product = [Fraction(0)] * (len(a) + len(b) - 1)
-    for i, left in enumerate(a):
-        for j, right in enumerate(b):
-            product[i + j] += left * right
-    return product
-
-
-def _add(a: Sequence[Fraction], b: Sequence[Fraction], length: int) -> list[Fraction]:
-    a, b = list(a) + [Fraction(0)] * length, list(b) + [Fraction(0)] * length
-    return [a[k] + b[k] for k in range(max(length, 1))]

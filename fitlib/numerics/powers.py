@@ -13,6 +13,7 @@ import numpy as np
 
 from fitlib.numerics.exact import ExactFit, square_root
 from fitlib.numerics.families.polynomial import PolynomialCurve, Scale
+from fitlib.numerics.rationals import padded, product, total, value_at
 
 
 @dataclass(frozen=True)
@@ -88,41 +89,24 @@ def _columns(scale: Scale, count: int) -> tuple[list[list[Fraction]], list[Fract
     u = [-centre / half, 1 / half]
     basis = [[Fraction(1)], u]
     while len(basis) < max(count, len(scale.nodal), len(scale.interpolant)):
-        basis.append(_subtract(_multiply([2 * u[0], 2 * u[1]], basis[-1]), basis[-2]))
+        basis.append(total(product([2 * u[0], 2 * u[1]], basis[-1]), [-term for term in basis[-2]]))
     nodal = _series(basis, scale.nodal)
     constant = _series(basis, scale.interpolant)
     length = count + len(scale.nodal) - 1
-    columns = [_pad(_multiply(nodal, basis[j]), length) for j in range(count)]
-    return columns, _pad(constant, length)
+    columns = [padded(product(nodal, basis[j]), length) for j in range(count)]
+    return columns, padded(constant, length)
 
 
 def _series(basis: list[list[Fraction]], coefficients: np.ndarray) -> list[Fraction]:
-    total = [Fraction(0)]
+    terms = [Fraction(0)]
     for function, value in zip(basis, coefficients, strict=False):
-        total = _subtract(total, [-Fraction(float(value)) * term for term in function])
-    return total
+        terms = total(terms, [Fraction(float(value)) * term for term in function])
+    return terms
 
 
 def _combine(columns, constant, coefficients) -> list[Fraction]:
     rows = zip(constant, *columns, strict=True)
     return [row[0] + sum(a * b for a, b in zip(row[1:], coefficients, strict=True)) for row in rows]
-
-
-def _multiply(a: list[Fraction], b: list[Fraction]) -> list[Fraction]:
-    product = [Fraction(0)] * (len(a) + len(b) - 1)
-    for i, left in enumerate(a):
-        for j, right in enumerate(b):
-            product[i + j] += left * right
-    return product
-
-
-def _subtract(a: list[Fraction], b: list[Fraction]) -> list[Fraction]:
-    length = max(len(a), len(b))
-    return [left - right for left, right in zip(_pad(a, length), _pad(b, length), strict=True)]
-
-
-def _pad(a: list[Fraction], length: int) -> list[Fraction]:
-    return list(a) + [Fraction(0)] * (length - len(a))
 
 
 def _to_double(value: Fraction) -> float:
@@ -142,11 +126,4 @@ def _largest_shift(exact: list[Fraction], rounded: list[float], lower: float, up
         return float("inf")
     change = [a - Fraction(b) for a, b in zip(exact, rounded, strict=True)]
     points = [Fraction(lower) + (Fraction(upper) - Fraction(lower)) * k / 64 for k in range(65)]
-    return _to_double(max(abs(_horner(change, point)) for point in points))
-
-
-def _horner(coefficients: list[Fraction], x: Fraction) -> Fraction:
-    total = Fraction(0)
-    for value in reversed(coefficients):
-        total = total * x + value
-    return total
+    return _to_double(max(abs(value_at(change, point)) for point in points))

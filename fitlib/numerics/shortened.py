@@ -9,6 +9,7 @@ import numpy as np
 
 from fitlib.errors import FitlibError
 from fitlib.numerics.families.protocol import Curve
+from fitlib.numerics.rationals import value_at
 
 #: Largest shift that shortening may cause, as a share of the standard uncertainty of a converted value.
 LARGEST_SHARE = 1 / 20
@@ -92,14 +93,7 @@ def _rounded(curve: Curve, coefficients, digits: int, x: np.ndarray, uncertainty
     words = tuple(f"{float(value):.{digits - 1}e}" for value in coefficients)
     numbers = [Fraction(word) for word in words]
     # Exact evaluation: rounding of the arithmetic must not be mistaken for rounding of the coefficients
-    values = np.array([float(_horner(numbers, Fraction(float(point)))) for point in x])
+    values = np.array([float(value_at(numbers, Fraction(float(point)))) for point in x])
     with np.errstate(divide="ignore", invalid="ignore"):
         share = np.abs(values - curve.evaluate(x)) / uncertainty
     return ShortForm(digits, words, float(np.max(np.where(np.isnan(share), np.inf, share))))
-
-
-def _horner(coefficients: list[Fraction], x: Fraction) -> Fraction:
-    total = Fraction(0)
-    for value in reversed(coefficients):
-        total = total * x + value
-    return total

@@ -5,7 +5,7 @@ from fitlib.study.keys import study_keys
 from fitlib.study.loader import load_study
 from fitlib.study.names import file_name_of
 from fitlib.study.resolved import resolve_dataset
-from fitlib.study.schema import export_schema
+from fitlib.study.schema import export_schema, schema_text
 from fitlib.study.settings import (
     Columns,
     DatasetSettings,
@@ -34,5 +34,6 @@ __all__ = [
     "load_glossary",
     "load_study",
     "resolve_dataset",
+    "schema_text",
     "study_keys",
 ]
